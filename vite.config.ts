@@ -2,10 +2,11 @@ import vue from '@vitejs/plugin-vue'
 import Components from 'unplugin-vue-components/vite'
 import { ElementPlusResolver } from 'unplugin-vue-components/resolvers'
 import { defineConfig } from 'vite'
+import type { PluginOption } from 'vite'
 
 const apiUrl = process.env.EVENSTRUNG_URL ?? 'http://127.0.0.1:4181'
 
-export const clientPlugins = () => [
+export const clientPlugins = (): PluginOption[] => [
   vue(),
   // Only Element Plus is found by name; the project's own components are imported where they are used.
   Components({ dirs: [], dts: false, resolvers: [ElementPlusResolver({ importStyle: 'css' })] }),

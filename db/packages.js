@@ -30,7 +30,8 @@ function findCommand(name) {
 /** @param {string} name */
 export function pathOfCommand(name) {
   const file = findCommand(name)
-  if (!file) throw new StartFault(`The program ${name} is missing: run 'npm start' once, it installs what it needs.`)
+  if (!file)
+    throw new StartFault(`The program ${name} is missing: run 'npm start' once, it installs what it needs.`)
   return file
 }
 
@@ -57,8 +58,10 @@ export async function ensurePackages(purposes) {
       `Missing: ${missing.join(', ')}, and this system has no apt-get: install them with its own package tool, then run the same command again.`,
     )
   const prefix = process.getuid?.() === 0 ? [] : ['sudo', '-n']
-  if (prefix.length > 0 && !(findCommand("sudo") && (await run(['sudo', '-n', 'true'])).exitCode === 0))
-    throw new StartFault(`Missing: ${missing.join(', ')}. Run this once, then the same command again: ${byHand}`)
+  if (prefix.length > 0 && !(findCommand('sudo') && (await run(['sudo', '-n', 'true'])).exitCode === 0))
+    throw new StartFault(
+      `Missing: ${missing.join(', ')}. Run this once, then the same command again: ${byHand}`,
+    )
   await step(`Installing from Debian: ${missing.join(', ')}`, async () => {
     const calm = ['env', 'DEBIAN_FRONTEND=noninteractive']
     const patience = ['-o', 'DPkg::Lock::Timeout=120']
@@ -72,7 +75,9 @@ export async function ensurePackages(purposes) {
   })
   const still = missingPackages(purposes)
   if (still.length > 0)
-    throw new StartFault(`Installed, but the programs of ${still.join(', ')} are still not found: reinstall these packages.`)
+    throw new StartFault(
+      `Installed, but the programs of ${still.join(', ')} are still not found: reinstall these packages.`,
+    )
 }
 
 /** @param {string} output */

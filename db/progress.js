@@ -1,7 +1,7 @@
 /** @typedef {(line: string) => void} Print */
 
 /** @type {Print} */
-export const printLine = (line) => process.stdout.write(`${line}\n`)
+export const printLine = (line) => void process.stdout.write(`${line}\n`)
 
 /** @param {number} startedAt */
 const secondsSince = (startedAt) => (performance.now() - startedAt) / 1000

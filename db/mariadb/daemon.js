@@ -24,7 +24,8 @@ const STOP_PATIENCE_MS = 60_000
 export function findDaemon(instance) {
   const word = `--datadir=${instance.dataDir}`
   const [found] = findProcesses(
-    (args) => path.basename(args[0] ?? '') === 'mariadbd' && args.includes(word) && !args.includes('--bootstrap'),
+    (args) =>
+      path.basename(args[0] ?? '') === 'mariadbd' && args.includes(word) && !args.includes('--bootstrap'),
   )
   if (!found) return undefined
   const port = found.args.find((arg) => arg.startsWith('--port='))?.slice('--port='.length)

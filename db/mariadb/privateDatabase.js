@@ -47,7 +47,12 @@ export function accountStatements(secrets, databaseName) {
  * @returns {Promise<PrivateDatabase>}
  */
 export async function joinDatabase(instance, secrets, options = {}) {
-  const { databaseName = 'evenstrung', extraStatements = [], portSetting = 'DB_PORT', print = printLine } = options
+  const {
+    databaseName = 'evenstrung',
+    extraStatements = [],
+    portSetting = 'DB_PORT',
+    print = printLine,
+  } = options
   return withLock(instance.root, async () => {
     const running = findDaemon(instance)
     if (!running) await prepareDataFolder(instance, print)
