@@ -28,8 +28,18 @@ export const Person = z.object({
 })
 export type Person = z.infer<typeof Person>
 
+/** Whose name the screens carry and whose clock they show; `timeZone` is an IANA name. */
+export const Workshop = z.object({ name: z.string(), timeZone: z.string() })
+export type Workshop = z.infer<typeof Workshop>
+
 /** Who is signed in, and until when the short token lasts: the client refreshes before that. */
-export const SignedIn = z.object({ person: Person, tokenUntil: Instant, sessionId: Id })
+export const SignedIn = z.object({
+  person: Person,
+  tokenUntil: Instant,
+  sessionId: Id,
+  /** absent: dates are shown in the browser's time zone */
+  workshop: Workshop.optional(),
+})
 export type SignedIn = z.infer<typeof SignedIn>
 
 export const SignOut = z.object({ everywhere: z.boolean() })
