@@ -1,4 +1,4 @@
-import { StartFault, codeOf } from './fault.js'
+import { StartFault, messageOf } from './fault.js'
 
 /** @type {Record<string, () => Promise<{ run: (args: string[]) => Promise<number> }>>} */
 const commands = {
@@ -24,12 +24,4 @@ export async function main([name = '', ...args]) {
     process.exitCode = 1
     process.stderr.write(`${messageOf(error)}\n`)
   }
-}
-
-/** @param {unknown} error */
-export function messageOf(error) {
-  if (error instanceof StartFault) return error.message
-  if (codeOf(error) === 'ENOSPC')
-    return 'The disk is full: free some space and run the same command again, nothing was lost.'
-  return error instanceof Error ? (error.stack ?? error.message) : String(error)
 }

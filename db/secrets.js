@@ -7,7 +7,7 @@ import { StartFault, codeOf } from './fault.js'
  * @typedef {object} Secrets
  * @property {string} databaseOwnerPassword
  * @property {string} databaseAppPassword
- * @property {string} jwtSecret base64url of 48 random bytes
+ * @property {string} jwtSecret hex of 48 random bytes
  * @property {Record<string, string>} [benchTokens] token by bench key
  */
 
@@ -45,7 +45,7 @@ function write(dataDir, secrets) {
  */
 export function readSecrets(dataDir) {
   const stored = readStored(dataDir)
-  const random = () => randomBytes(48).toString('base64url')
+  const random = () => randomBytes(48).toString('hex')
   const secrets = {
     ...stored,
     databaseOwnerPassword: stored.databaseOwnerPassword ?? random(),
