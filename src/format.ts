@@ -33,9 +33,14 @@ function withUnit(text: string, unit: string): string {
   return text === NO_VALUE ? text : `${text} ${unit}`
 }
 
+/** A level given in dBV as a number of the unit that the person chose. */
+export function levelIn(levelDb: number, unit: LevelUnit): number {
+  return unit === 'dBu' ? levelDb + DBU_ABOVE_DBV_DB : levelDb
+}
+
 /** A level given in dBV, in the unit that the person chose: '−21.9 dBV'. */
 export function formatLevel(levelDb: Value, unit: LevelUnit = 'dBV', decimals = 1): string {
-  const shown = levelDb == null ? levelDb : unit === 'dBu' ? levelDb + DBU_ABOVE_DBV_DB : levelDb
+  const shown = levelDb == null ? levelDb : levelIn(levelDb, unit)
   return withUnit(formatNumber(shown, decimals), unit)
 }
 
