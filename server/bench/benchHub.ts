@@ -1,0 +1,128 @@
+import { EventEmitter } from 'node:events'
+import type { Socket } from 'socket.io'
+import type {
+  BenchHello,
+  BenchToServer,
+  RunOrder,
+  RunPrompt,
+  ServerToBench,
+} from '../../src/shared/contract/frames.ts'
+import type { SimulationCommand } from '../../src/shared/contract/simulation.ts'
+import { AppError, problemOf } from '../errors.ts'
+import type { OpenRun } from '../runs/openRun.ts'
+import type { MeasuredRun } from '../../src/shared/contract/measured.ts'
+
+export type BenchSocket = Socket<BenchToServer, ServerToBench, Record<string, never>, { benchId: string }>
+
+interface Connection {
+  socket: BenchSocket
+  hello: BenchHello | null
+}
+
+const SIMULATE_TIMEOUT_MS = 3000
+/** Frames in a batch: the server sets it, the bench keeps to it. */
+export const WINDOW_FRAMES = 200
+
+/** Which benches are connected, and the messages that go to them. */
+export class BenchHub {
+  readonly events = new EventEmitter<{ changed: [benchId: string] }>()
+  private readonly connections = new Map<string, Connection>()
+  private readonly prompts = new Map<string, string>()
+
+  /** The newest connection of a bench wins; the older one is told and stays away. */
+  connect(benchId: string, socket: BenchSocket): void {
+    const older = this.connections.get(benchId)
+    this.connections.set(benchId, { socket, hello: null })
+    if (older) {
+      older.socket.emit('bench:replaced', problemOf(new AppError('bench.replaced')))
+      older.socket.disconnect(true)
+    }
+  }
+
+  disconnect(benchId: string, socket: BenchSocket): void {
+    if (this.connections.get(benchId)?.socket !== socket) return
+    this.connections.delete(benchId)
+    this.prompts.delete(benchId)
+    this.events.emit('changed', benchId)
+  }
+
+  greet(benchId: string, socket: BenchSocket, hello: BenchHello): void {
+    const connection = this.connections.get(benchId)
+    if (connection?.socket !== socket) throw new AppError('bench.replaced')
+    connection.hello = hello
+    this.events.emit('changed', benchId)
+  }
+
+  isConnected(benchId: string): boolean {
+    return this.helloOf(benchId) !== null
+  }
+
+  helloOf(benchId: string): BenchHello | null {
+    return this.connections.get(benchId)?.hello ?? null
+  }
+
+  startRun(run: OpenRun): void {
+    this.connections.get(run.row.benchId)?.socket.emit('run:start', orderOf(run))
+    this.prompt(run, run.method.viewRun(run.state))
+  }
+
+  prompt(run: OpenRun, measured: MeasuredRun): void {
+    const message: RunPrompt = {
+      run: run.row.id,
+      phase: measured.phase,
+      prompt: measured.prompt,
+      stringNo: measured.promptStringNo,
+    }
+    const key = JSON.stringify(message)
+    if (this.prompts.get(run.row.benchId) === key) return
+    const socket = this.connections.get(run.row.benchId)?.socket
+    if (!socket) return
+    this.prompts.set(run.row.benchId, key)
+    socket.emit('run:prompt', message)
+  }
+
+  committed(run: OpenRun): void {
+    this.connections
+      .get(run.row.benchId)
+      ?.socket.emit('run:committed', { run: run.row.id, committed: run.committed })
+  }
+
+  ended(run: OpenRun, measured: MeasuredRun): void {
+    this.prompts.delete(run.row.benchId)
+    this.connections.get(run.row.benchId)?.socket.emit('run:ended', {
+      run: run.row.id,
+      outcome: run.ending?.status ?? 'interrupted',
+      verdict: measured.verdict,
+    })
+    this.events.emit('changed', run.row.benchId)
+  }
+
+  async simulate(benchId: string, command: SimulationCommand): Promise<void> {
+    const connection = this.connections.get(benchId)
+    if (!connection) throw new AppError('bench.offline')
+    const answer = await connection.socket
+      .timeout(SIMULATE_TIMEOUT_MS)
+      .emitWithAck('bench:simulate', command)
+      .catch(() => {
+        throw new AppError('bench.offline')
+      })
+    if (!answer.ok) throw new AppError(answer.problem.code, { detail: answer.problem.detail })
+  }
+
+  /** Cuts a bench off, for example when its token was replaced. */
+  cut(benchId: string): void {
+    this.connections.get(benchId)?.socket.disconnect(true)
+  }
+}
+
+export function orderOf(run: OpenRun): RunOrder {
+  const { setup } = run.row
+  return {
+    run: run.row.id,
+    serial: run.row.serial,
+    from: run.next,
+    window: WINDOW_FRAMES,
+    noiseStretchMs: setup.sheet.noiseStretchMs,
+    expectedHz: setup.model.tuning.map((pitch) => pitch.pitchesHz),
+  }
+}

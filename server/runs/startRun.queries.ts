@@ -1,0 +1,122 @@
+import { randomUUID } from 'node:crypto'
+import type { Knex } from 'knex'
+import { z } from 'zod'
+import { Model, StringPitch, ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
+import { AppError } from '../errors.ts'
+import { foldedSerial } from '../instruments/foldedSerial.ts'
+import { fromJson } from './runs.queries.ts'
+
+const Numbers = z.array(z.number())
+
+export interface BenchSetup {
+  name: string
+  calibrationDb: number[]
+  uCalOwnDb: number
+  uCalSharedDb: number
+  studySDb: number | null
+  /** of the newest verification when it passed and still holds, else null */
+  verificationId: string | null
+  floorDb: number[]
+}
+
+export async function findBenchSetup(knex: Knex, benchId: string, at: Date): Promise<BenchSetup | null> {
+  const bench = (await knex('benches').where({ id: benchId, retired_at: null }).first()) as
+    | {
+        name: string
+        calibration_db: unknown
+        u_cal_own_db: number
+        u_cal_shared_db: number
+        study_s_db: number | null
+      }
+    | undefined
+  if (!bench) return null
+  const newest = (await knex('bench_verifications')
+    .where({ bench_id: benchId })
+    .orderBy('at', 'desc')
+    .first()) as { id: string; passed: number; valid_until: Date | null; floor_db: unknown } | undefined
+  const holds = newest?.passed && newest.valid_until && newest.valid_until > at
+  return {
+    name: bench.name,
+    calibrationDb: Numbers.parse(fromJson(bench.calibration_db)),
+    uCalOwnDb: bench.u_cal_own_db,
+    uCalSharedDb: bench.u_cal_shared_db,
+    studySDb: bench.study_s_db,
+    verificationId: holds ? newest.id : null,
+    floorDb: newest ? Numbers.parse(fromJson(newest.floor_db)) : [],
+  }
+}
+
+interface RawModel {
+  id: string
+  key: string
+  name: string
+  strings: string
+  handedness: string
+  circuit: string
+  jack_kind: string
+  tuning: unknown
+  is_recording: number
+}
+
+function toModel(raw: RawModel): Model {
+  return Model.parse({
+    id: raw.id,
+    key: raw.key,
+    name: raw.name,
+    strings: raw.strings,
+    handedness: raw.handedness,
+    circuit: raw.circuit,
+    jackKind: raw.jack_kind,
+    tuning: z.array(StringPitch).parse(fromJson(raw.tuning)),
+    isRecording: Boolean(raw.is_recording),
+  })
+}
+
+/** The model of a known serial, or for a new one the model that was chosen. */
+export async function findStartModel(knex: Knex, serial: string, modelId: string | null): Promise<Model> {
+  const known = (await knex('instruments')
+    .join('models', 'models.id', 'instruments.model_id')
+    .where('instruments.serial', serial)
+    .first('models.*')) as RawModel | undefined
+  if (known) {
+    if (modelId && modelId !== known.id)
+      throw new AppError('instrument.model-differs', { facts: { model: known.name } })
+    return toModel(known)
+  }
+  if (!modelId) throw new AppError('instrument.unknown', { facts: { serial } })
+  const chosen = (await knex('models').where({ id: modelId }).first()) as RawModel | undefined
+  if (!chosen) throw new AppError('model.unknown')
+  return toModel(chosen)
+}
+
+/** The revision in force at that moment; it judges the run, whatever is approved meanwhile. */
+export async function findSheetInForce(
+  knex: Knex,
+  modelId: string,
+  at: Date,
+): Promise<ThresholdSheet | null> {
+  const row = (await knex('threshold_revisions')
+    .where({ model_id: modelId, status: 'inForce' })
+    .where('in_force_from', '<=', at)
+    .orderBy('in_force_from', 'desc')
+    .orderBy('revision', 'desc')
+    .first('sheet')) as { sheet: unknown } | undefined
+  return row ? ThresholdSheet.parse(fromJson(row.sheet)) : null
+}
+
+export async function findOrInsertInstrument(
+  trx: Knex,
+  serial: string,
+  modelId: string,
+  at: Date,
+): Promise<string> {
+  const known = (await trx('instruments').where({ serial }).first('id')) as { id: string } | undefined
+  if (known) return known.id
+  const id = randomUUID()
+  await trx('instruments')
+    .insert({ id, serial, serial_folded: foldedSerial(serial), model_id: modelId, created_at: at })
+    .onConflict('serial')
+    .ignore()
+  const row = (await trx('instruments').where({ serial }).first('id')) as { id: string }
+  return row.id
+}
