@@ -42,7 +42,7 @@ export async function ensureBuilt(wanted = allTargets, { signal, print } = {}) {
     for (const target of wanted) {
       const fingerprint = fingerprintOf(targets[target].inputs)
       if (isBuilt(target, fingerprint)) continue
-      await step(`Building the ${target}`, () => buildTarget(target, fingerprint, signal), print)
+      await step(`Building the ${target}`, () => buildTarget(target, fingerprint, signal), { print })
     }
   })
 }
@@ -146,5 +146,7 @@ async function bundle(name, outDir) {
       `${error instanceof Error ? error.message : String(error)}\nBuilding the ${name} failed: mend what stands above, then run the same command again.`,
       { cause: error },
     )
+  } finally {
+    await esbuild.stop()
   }
 }

@@ -2,6 +2,7 @@ import { mkdirSync } from 'node:fs'
 import path from 'node:path'
 import { spawn } from 'node:child_process'
 import { ensureBuilt } from '../build.js'
+import { listenForEnd } from '../ending.js'
 import { appEnvironment, built, ownerEnvironment } from '../environment.js'
 import { ensureModules } from '../modules.js'
 import { openDatabase } from '../openDatabase.js'
@@ -21,6 +22,7 @@ const HEALTH_PATIENCE_MS = 60_000
  * @returns {Promise<number>}
  */
 export async function run() {
+  const ending = listenForEnd()
   const settings = readSettings()
   const serverSettings = { ...settings, port: settings.port + 1 }
   mkdirSync(settings.dataDir, { recursive: true })
@@ -31,9 +33,6 @@ export async function run() {
   // The workers run from the bundle, also beside a server that runs from its sources.
   await ensureBuilt(['server'])
   const database = await openDatabase(settings)
-  const ending = new AbortController()
-  for (const name of /** @type {const} */ (['SIGINT', 'SIGTERM', 'SIGHUP']))
-    process.on(name, () => ending.abort())
   /** @type {ReturnType<typeof startShown>[]} */
   const children = []
   try {

@@ -45,9 +45,7 @@ export async function run(args) {
       ownerUrl: withName(database.ownerUrl, name),
     }
     await makeRoom(withName(addresses.ownerUrl, ''), name, values.force)
-    await step(`Restoring ${file} into ${name}`, () =>
-      loadDump(addresses.ownerUrl, file, packed),
-    )
+    await step(`Restoring ${file} into ${name}`, () => loadDump(addresses.ownerUrl, file, packed))
     // An older backup is brought up to date, and the application's user gets its rights on the tables.
     await runChild(process.execPath, [built('server/cli/migrate.js')], {
       env: ownerEnvironment(settings, addresses),

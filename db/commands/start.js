@@ -2,6 +2,7 @@ import { mkdirSync, readFileSync } from 'node:fs'
 import path from 'node:path'
 import { setTimeout as wait } from 'node:timers/promises'
 import { ensureBuilt } from '../build.js'
+import { listenForEnd } from '../ending.js'
 import { appEnvironment, built, ownerEnvironment } from '../environment.js'
 import { StartFault, codeOf, messageOf } from '../fault.js'
 import { ensureModules } from '../modules.js'
@@ -9,7 +10,7 @@ import { openDatabase } from '../openDatabase.js'
 import { ensurePackages } from '../packages.js'
 import { requireFreePort } from '../ports.js'
 import { startTimeOf } from '../processes.js'
-import { printLine } from '../progress.js'
+import { printLine, step } from '../progress.js'
 import { runChild } from '../runChild.js'
 import { claimDataFolder, endLeftOvers, forgetRunning, noteRunning } from '../running.js'
 import { readSecrets } from '../secrets.js'
@@ -27,14 +28,9 @@ const HEALTH_PATIENCE_MS = 30_000
 export async function run() {
   const startedAt = performance.now()
   const settings = readSettings()
-  const ending = new AbortController()
+  const ending = listenForEnd()
   /** @type {(() => Promise<unknown> | void)[]} last in, first out: benches, server, database */
   const undo = []
-  const askToEnd = () => {
-    if (ending.signal.aborted) printLine('Still ending; the database writes out what it holds.')
-    ending.abort()
-  }
-  for (const name of /** @type {const} */ (['SIGINT', 'SIGTERM', 'SIGHUP'])) process.on(name, askToEnd)
   let exitCode = 0
   try {
     await bringUp(settings, ending.signal, (work) => undo.push(work))
@@ -97,11 +93,16 @@ function makeDataFolder(dataDir) {
 /** @param {Settings} settings @param {OpenDatabase} database @param {AbortSignal} signal */
 async function prepareTables(settings, database, signal) {
   const env = ownerEnvironment(settings, database)
-  await runChild(process.execPath, [built('server/cli/migrate.js')], {
-    env,
-    signal,
-    what: 'Bringing the tables up to date',
-  })
+  await step(
+    'Bringing the tables up to date',
+    () =>
+      runChild(process.execPath, [built('server/cli/migrate.js')], {
+        env,
+        signal,
+        what: 'Bringing the tables up to date',
+      }),
+    { quietMs: 1500 },
+  )
   if (settings.mode === 'production') return
   await runChild(process.execPath, [built('server/cli/seed.js')], {
     env,

@@ -5,6 +5,7 @@ import path from 'node:path'
 import { requireDiskSpace } from '../disk.js'
 import { StartFault, codeOf } from '../fault.js'
 import { pathOfCommand } from '../packages.js'
+import { step } from '../progress.js'
 
 /** @typedef {import('./instance.js').Instance} Instance */
 
@@ -32,7 +33,7 @@ export async function prepareDataFolder(instance, print) {
     rmSync(instance.unfinishedDir, { recursive: true, force: true })
   }
   requireDiskSpace(instance.root, FIRST_START_BYTES, 'a new database')
-  await initialise(instance)
+  await step('Making the private database', () => initialise(instance), { print })
 }
 
 /** @param {Instance} instance */
