@@ -35,30 +35,45 @@ export function pathOfCommand(name) {
   return file
 }
 
-/** @param {Purpose[]} purposes @returns {string[]} Debian packages whose programs are not there */
-export function missingPackages(purposes) {
+/**
+ * @param {Purpose[]} purposes
+ * @param {(name: string) => string | undefined} [find]
+ * @returns {string[]} Debian packages whose programs are not there
+ */
+export function missingPackages(purposes, find = findCommand) {
   return purposes
     .flatMap((purpose) => packages[purpose])
-    .filter(({ commands }) => commands.some((name) => !findCommand(name)))
+    .filter(({ commands }) => commands.some((name) => !find(name)))
     .map((entry) => entry.package)
 }
 
 /**
+ * The system as the installer sees it; a test puts another in its place.
+ * @typedef {object} System
+ * @property {(name: string) => string | undefined} find
+ * @property {() => boolean} isRoot
+ * @property {(words: string[]) => Promise<{ exitCode: number | null, output: string }>} run
+ */
+
+/** @type {System} */
+const thisSystem = { find: findCommand, isRoot: () => process.getuid?.() === 0, run }
+
+/**
  * Installs what is missing, as root or with a sudo that asks no password; else says the one command to run.
  * @param {Purpose[]} purposes
+ * @param {System} [system]
  */
-export async function ensurePackages(purposes) {
-  const missing = missingPackages(purposes)
+export async function ensurePackages(purposes, system = thisSystem) {
+  const missing = missingPackages(purposes, system.find)
   if (missing.length === 0) return
   const install = ['apt-get', 'install', '-y', '--no-install-recommends', ...missing]
   const byHand = `sudo sh -c 'apt-get update && ${install.join(' ')}'`
-  const aptGet = findCommand('apt-get')
-  if (!aptGet)
+  if (!system.find('apt-get'))
     throw new StartFault(
       `Missing: ${missing.join(', ')}, and this system has no apt-get: install them with its own package tool, then run the same command again.`,
     )
-  const prefix = process.getuid?.() === 0 ? [] : ['sudo', '-n']
-  if (prefix.length > 0 && !(findCommand('sudo') && (await run(['sudo', '-n', 'true'])).exitCode === 0))
+  const prefix = await rootPrefix(system)
+  if (!prefix)
     throw new StartFault(
       `Missing: ${missing.join(', ')}. Run this once, then the same command again: ${byHand}`,
     )
@@ -66,18 +81,25 @@ export async function ensurePackages(purposes) {
     const calm = ['env', 'DEBIAN_FRONTEND=noninteractive']
     const patience = ['-o', 'DPkg::Lock::Timeout=120']
     for (const command of [['apt-get', 'update'], install]) {
-      const { exitCode, output } = await run([...prefix, ...calm, ...command, ...patience])
+      const { exitCode, output } = await system.run([...prefix, ...calm, ...command, ...patience])
       if (exitCode !== 0)
         throw new StartFault(
           `${command.slice(0, 2).join(' ')} failed (${lastLine(output)}): check the network and the package sources, then run: ${byHand}`,
         )
     }
   })
-  const still = missingPackages(purposes)
+  const still = missingPackages(purposes, system.find)
   if (still.length > 0)
     throw new StartFault(
       `Installed, but the programs of ${still.join(', ')} are still not found: reinstall these packages.`,
     )
+}
+
+/** @param {System} system @returns {Promise<string[] | undefined>} words before a command that runs it as root */
+async function rootPrefix({ find, isRoot, run }) {
+  if (isRoot()) return []
+  if (find('sudo') && (await run(['sudo', '-n', 'true'])).exitCode === 0) return ['sudo', '-n']
+  return undefined
 }
 
 /** @param {string} output */

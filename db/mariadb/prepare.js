@@ -5,6 +5,7 @@ import path from 'node:path'
 import { requireDiskSpace } from '../disk.js'
 import { StartFault, codeOf } from '../fault.js'
 import { pathOfCommand } from '../packages.js'
+import { endProcess, findProcesses } from '../processes.js'
 import { step } from '../progress.js'
 
 /** @typedef {import('./instance.js').Instance} Instance */
@@ -28,6 +29,8 @@ export async function prepareDataFolder(instance, print) {
     requireDiskSpace(instance.root, LATER_START_BYTES, 'the database')
     return
   }
+  for (const { pid } of findProcesses((args) => args.includes(`--datadir=${instance.unfinishedDir}`)))
+    await endProcess(pid, 10_000)
   if (existsSync(instance.unfinishedDir)) {
     print('  an earlier first start was interrupted: its half-made database folder is made anew')
     rmSync(instance.unfinishedDir, { recursive: true, force: true })
