@@ -1,0 +1,95 @@
+import type { Knex } from 'knex'
+import { z } from 'zod'
+import { ChannelKind } from '../../src/shared/contract/frames.ts'
+import { Capability } from '../../src/shared/contract/rules.ts'
+import type { BenchView } from '../../src/shared/contract/workshop.ts'
+import { fromJson } from '../runs/runs.queries.ts'
+import type { BenchConnections } from './benchConnections.ts'
+
+interface RawBench {
+  id: string
+  name: string
+  code: string
+  enrolled: number
+  simulated: number
+  channel_kind: string | null
+  capabilities: unknown
+  verified_at: Date | null
+  passed: number | null
+  valid_until: Date | null
+  run_id: string | null
+  run_serial: string | null
+  run_person: string | null
+}
+
+const NEWEST_VERIFICATION = `bench_verifications.id = (
+  select newest.id from bench_verifications as newest
+  where newest.bench_id = benches.id order by newest.at desc, newest.id desc limit 1)`
+
+function benches(knex: Knex): Knex.QueryBuilder {
+  return knex('benches')
+    .leftJoin('bench_verifications', (on) => on.on(knex.raw(NEWEST_VERIFICATION)))
+    .leftJoin('runs', 'runs.open_bench_id', 'benches.id')
+    .leftJoin('instruments', 'instruments.id', 'runs.instrument_id')
+    .leftJoin('users', 'users.id', 'runs.opened_by')
+    .whereNull('benches.retired_at')
+    .orderBy('benches.name')
+    .select(
+      'benches.id',
+      'benches.name',
+      'benches.code',
+      knex.raw('benches.token_hash is not null as enrolled'),
+      'benches.simulated',
+      'benches.channel_kind',
+      'benches.capabilities',
+      'bench_verifications.at as verified_at',
+      'bench_verifications.passed',
+      'bench_verifications.valid_until',
+      'runs.id as run_id',
+      'instruments.serial as run_serial',
+      'users.name as run_person',
+    )
+}
+
+function benchOf(row: RawBench, hub: BenchConnections, now: Date): BenchView {
+  const isVerified = Boolean(row.passed) && row.valid_until !== null && row.valid_until > now
+  return {
+    id: row.id,
+    name: row.name,
+    code: row.code,
+    enrolled: Boolean(row.enrolled),
+    simulated: Boolean(row.simulated),
+    channelKind: row.channel_kind === null ? null : ChannelKind.parse(row.channel_kind),
+    capabilities: z.array(Capability).parse(fromJson(row.capabilities)),
+    connected: hub.isConnected(row.id),
+    verifiedAt: row.verified_at?.toISOString() ?? null,
+    verifiedUntil: row.valid_until?.toISOString() ?? null,
+    verified: isVerified,
+    openRun:
+      row.run_id === null ? null : { id: row.run_id, serial: row.run_serial!, person: row.run_person! },
+  }
+}
+
+/** Benches that are not retired, by name. */
+export async function listBenches(knex: Knex, hub: BenchConnections, now: Date): Promise<BenchView[]> {
+  return ((await benches(knex)) as RawBench[]).map((row) => benchOf(row, hub, now))
+}
+
+export async function findBench(
+  knex: Knex,
+  hub: BenchConnections,
+  id: string,
+  now: Date,
+): Promise<BenchView | null> {
+  const [row] = (await benches(knex).where('benches.id', id)) as RawBench[]
+  return row ? benchOf(row, hub, now) : null
+}
+
+export async function findBenchByCode(
+  knex: Knex,
+  code: string,
+): Promise<{ id: string; name: string } | null> {
+  const row = (await knex('benches').where({ code, retired_at: null }).first('id', 'name')) as
+    { id: string; name: string } | undefined
+  return row ?? null
+}
