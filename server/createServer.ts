@@ -5,11 +5,14 @@ import type { Logger } from 'pino'
 import { Server } from 'socket.io'
 import { BENCH_NAMESPACE } from '../src/shared/contract/frames.ts'
 import { LIVE_NAMESPACE } from '../src/shared/contract/live.ts'
+import { METHOD } from '../src/shared/measure/method.ts'
 import { createApp } from './app.ts'
 import { createPasswords } from './auth/passwords.ts'
 import { createSessions } from './auth/sessions.ts'
 import { openBenchGateway } from './bench/bench.gateway.ts'
+import type { BenchNamespace } from './bench/bench.gateway.ts'
 import { BenchHub } from './bench/benchHub.ts'
+import { protocolSchema } from './bench/protocolSchema.ts'
 import { listBenches } from './benches/benches.queries.ts'
 import { isAcknowledged } from './cautions/cautions.service.ts'
 import type { Config } from './config.ts'
@@ -17,7 +20,11 @@ import { createHandlers } from './handlers.ts'
 import { openLiveGateway } from './live/live.gateway.ts'
 import type { LiveNamespace } from './live/live.gateway.ts'
 import { RunBoard } from './runs/runBoard.ts'
+import { createRunsHandlers } from './runs/runs.handlers.ts'
 import { createRunsService } from './runs/runs.service.ts'
+
+/** Of the program; package.json says the same. */
+const VERSION = '0.1.0'
 
 /** Larger than any batch that keeps to the window; what is larger ends the connection. */
 const MAX_MESSAGE_BYTES = 512 * 1024
@@ -53,7 +60,17 @@ export async function createServer(deps: {
     now,
     cautionsAcknowledged: (userId) => isAcknowledged(knex, config, userId, now()),
   })
-  const handlers = createHandlers({ config, knex, sessions, passwords, hub, runs, now })
+  const handlers = createHandlers({
+    config,
+    knex,
+    sessions,
+    passwords,
+    hub,
+    runs: createRunsHandlers(knex, runs),
+    protocolSchema: protocolSchema(),
+    about: { method: METHOD, version: VERSION },
+    now,
+  })
   const http = createHttpServer(createApp({ config, handlers, sessions, log }))
   const io = new Server(http, {
     transports: ['websocket'],
@@ -62,7 +79,7 @@ export async function createServer(deps: {
     pingInterval: 10_000,
     pingTimeout: 10_000,
   })
-  openBenchGateway(io.of(BENCH_NAMESPACE), { knex, log, hub, board, now, refused })
+  openBenchGateway(io.of(BENCH_NAMESPACE) as BenchNamespace, { knex, log, hub, board, now, refused })
   openLiveGateway(io.of(LIVE_NAMESPACE) as LiveNamespace, {
     log,
     sessions,

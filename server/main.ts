@@ -9,7 +9,7 @@ import { refuseDemoAccounts } from './refuseDemoAccounts.ts'
 async function main(config: Config): Promise<void> {
   const log = createLog(config)
   const knex = connect(config.databaseUrl, 12)
-  if (config.mode === 'production') await refuseDemoAccounts(knex, config)
+  await refuseDemoAccounts(knex, config)
   const server = await createServer({ config, knex, log })
 
   let closing = false

@@ -60,6 +60,7 @@ export function answering(
 }
 
 const MOST_FIELDS = 5
+const MOST_TEST_MILLIVOLT = 5000
 
 function shapeProblem(message: unknown, error: z.ZodError): AppError {
   const fields = error.issues
@@ -70,9 +71,11 @@ function shapeProblem(message: unknown, error: z.ZodError): AppError {
 }
 
 function hasHighVoltage(message: unknown): boolean {
-  const events = (message as { events?: unknown }).events
+  const { events } = message as { events?: unknown }
   return (
     Array.isArray(events) &&
-    events.some((event) => (event as { testMillivolt?: unknown } | null)?.testMillivolt! > 5000)
+    events.some(
+      (event: { testMillivolt?: unknown } | null) => Number(event?.testMillivolt) > MOST_TEST_MILLIVOLT,
+    )
   )
 }

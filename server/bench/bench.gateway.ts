@@ -21,7 +21,12 @@ export interface BenchGatewayDeps {
   refused: (code: string) => void
 }
 
-type BenchNamespace = Namespace<BenchToServer, ServerToBench, Record<string, never>, { benchId: string }>
+export type BenchNamespace = Namespace<
+  BenchToServer,
+  ServerToBench,
+  Record<string, never>,
+  { benchId: string }
+>
 
 /** Benches: the token is checked before the connection stands; frames go to the run that is open on the bench. */
 export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDeps): void {

@@ -1,11 +1,10 @@
 import { createHash, randomBytes } from 'node:crypto'
-import { writeFileSync } from 'node:fs'
+import { existsSync, readFileSync, renameSync, writeFileSync } from 'node:fs'
 import path from 'node:path'
 import { fileURLToPath } from 'node:url'
 import bcrypt from 'bcryptjs'
 import type { Knex } from 'knex'
 import { DEMO_BENCHES, DEMO_MODELS, DEMO_PEOPLE, WORKSHOP, demoId, demoSheets } from '../../db/seeds/demo.ts'
-import { updateSecrets } from '../../db/secrets.js'
 import { insertAudit } from '../audit/audit.queries.ts'
 import { connect } from '../connect.ts'
 
@@ -110,6 +109,13 @@ export async function seedDemo(
 /** The demo's password is no secret: the accounts exist only in the invented workshop, production refuses them. */
 export const DEMO_PASSWORD = 'harrow-lane-demo'
 
+/** The simulated benches read their tokens from the secrets file, which nobody else may read. */
+function addBenchTokens(file: string, benchTokens: Record<string, string>): void {
+  const secrets = existsSync(file) ? (JSON.parse(readFileSync(file, 'utf8')) as Record<string, unknown>) : {}
+  writeFileSync(`${file}.new`, `${JSON.stringify({ ...secrets, benchTokens }, null, 2)}\n`, { mode: 0o600 })
+  renameSync(`${file}.new`, file)
+}
+
 async function main(): Promise<void> {
   const url = process.env.DATABASE_URL
   if (!url) throw new Error('Set DATABASE_URL first.')
@@ -125,7 +131,7 @@ async function main(): Promise<void> {
       console.log('the database is not empty, so nothing was seeded')
       return
     }
-    updateSecrets(dataDir, { benchTokens: seeded.benchTokens })
+    addBenchTokens(path.join(dataDir, 'secrets.json'), seeded.benchTokens)
     writeFileSync(path.join(dataDir, 'demo-accounts.json'), `${JSON.stringify(seeded.accounts, null, 2)}\n`, {
       mode: 0o600,
     })

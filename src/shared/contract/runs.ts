@@ -87,6 +87,7 @@ export const RunActionBody = z.discriminatedUnion('kind', [
 export type RunActionBody = z.infer<typeof RunActionBody>
 
 export const RunActionRequest = z.object({ id: Id, action: RunActionBody })
+export type RunActionRequest = z.infer<typeof RunActionRequest>
 
 /** As stored: applied after the frames below `frame`, in the order of `no`. */
 export const RunAction = z.object({
