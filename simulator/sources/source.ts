@@ -34,6 +34,8 @@ export interface BenchSource {
    * break; false: what was not sent before a restart is gone and the client reports a discontinuity.
    */
   readonly repeatable: boolean
+  /** A real-time source may run so many times faster than a clock; left out: 1. */
+  readonly timeScale?: number
   /** A run begins, or goes on after a restart at order.from. Frame numbers count from the run's start. */
   start(order: RunOrder): void
   /** The server's prompt changed; an instrument with an automatic hand follows it, a recording ignores it. */
@@ -43,6 +45,8 @@ export interface BenchSource {
    * puts an `endOfSource` event into its last step.
    */
   next(frameNo: number): SourceStep | 'notYet' | 'ended'
+  /** Whether the server answers at present: a person at the bench would stop and wait. */
+  serverSeen?(seen: boolean): void
   /** The run is over, sealed or not. */
   finish(): void
   /** Measure the check standard; left out where there is nothing to measure it with. */
