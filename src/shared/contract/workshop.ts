@@ -2,7 +2,7 @@ import { z } from 'zod'
 import { Id, Instant } from './quantities.ts'
 import { Capability } from './rules.ts'
 import { ChannelKind } from './frames.ts'
-import { Model, SheetSummary } from './thresholds.ts'
+import { Model, SheetSummary, ThresholdSheet } from './thresholds.ts'
 import { RunSummary, Serial } from './runs.ts'
 import { Verdict } from './measured.ts'
 
@@ -23,7 +23,11 @@ export const BenchView = z.object({
 })
 export type BenchView = z.infer<typeof BenchView>
 
-export const ModelView = Model.extend({ sheetInForce: SheetSummary.nullable() })
+export const ModelView = Model.extend({
+  sheetInForce: SheetSummary.nullable(),
+  /** the body of the sheet in force, so that the Check screen can say in advance what a bench cannot measure */
+  sheet: ThresholdSheet.nullable().optional(),
+})
 export type ModelView = z.infer<typeof ModelView>
 
 export const InstrumentSummary = z.object({
