@@ -2,9 +2,9 @@
 ;(function () {
   var choice = null
   try {
-    choice = localStorage.getItem('evenstrung.theme')
+    choice = JSON.parse(localStorage.getItem('evenstrung.theme'))
   } catch {
-    // A browser that keeps nothing follows the system.
+    // Nothing kept, or nothing that can be read: follow the system.
   }
   if (choice !== 'light' && choice !== 'dark') {
     choice = matchMedia('(prefers-color-scheme: dark)').matches ? 'dark' : 'light'

@@ -197,6 +197,15 @@ export function ruleName(rule: RuleId): string {
   return RULES[rule].name
 }
 
+/** What became of the live connection. */
+export const LIVE_STATES = {
+  off: 'not connected',
+  connecting: 'connecting',
+  connected: 'connected',
+  reconnecting: 'connection lost, trying again',
+  offline: 'no connection, trying again',
+} as const satisfies Record<string, string>
+
 /** Problems that no server can report, because it was not reached or not understood. */
 export const CLIENT_PROBLEMS = {
   'client.offline': {

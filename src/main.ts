@@ -1,0 +1,7 @@
+import { createPinia } from 'pinia'
+import { createApp } from 'vue'
+import App from './App.vue'
+import { makeRouter } from './router/index.ts'
+import './styles/index.css'
+
+createApp(App).use(createPinia()).use(makeRouter()).mount('#app')
