@@ -6,39 +6,62 @@ const FLOOR_TO_MS = 40
 /** Rise above the channel's own floor that makes an onset, as the measuring defines it. */
 const RISE_MDB = 10_000
 
+/** A string that still rings is excited again: two frames running stand this far over the last moment. */
+const AGAIN_MDB = 4_000
+const AGAIN_FROM_MS = 60
+const AGAIN_TO_MS = 20
+
 /**
- * Tells when a channel begins to sound: the first frame 10 dB above the median of the frames 200 to 40 ms before it.
- * Only says when to look for a pitch; what counts as a pluck is decided where the run is measured.
+ * Tells when a channel begins to sound: the first frame 10 dB above the median of the frames 200 to 40 ms before it,
+ * or a clear rise on top of what still rings. Only says when to look for a pitch; what counts as a pluck is decided where the run is measured.
  */
 export class OnsetDetector {
   private readonly levels: number[] = []
   private readonly most: number
   private readonly until: number
   private readonly lowestMdb: number
+  private readonly againFrom: number
+  private readonly againTo: number
   private above = false
+  private rising = false
 
   /** `lowestMdb`: no floor is taken to be lower than this, so that digital silence is not a floor. */
   constructor(frameMs: FrameMs, lowestMdb: number) {
     this.most = FLOOR_FROM_MS / frameMs
     this.until = (FLOOR_FROM_MS - FLOOR_TO_MS) / frameMs
+    this.againFrom = AGAIN_FROM_MS / frameMs
+    this.againTo = AGAIN_TO_MS / frameMs
     this.lowestMdb = lowestMdb
   }
 
-  /** Takes the next frame's level; true if the channel begins to sound in it. */
+  /** Takes the next frame's level; true if the channel begins to sound in it, or sounds anew. */
   push(levelMdb: number): boolean {
-    const value = levelMdb === SILENCE_MDB || levelMdb === NOT_MEASURED_MDB ? this.lowestMdb : levelMdb
-    const above = this.levels.length === this.most && value >= this.floorMdb() + RISE_MDB
-    const begins = above && !this.above
+    const heard = levelMdb !== SILENCE_MDB && levelMdb !== NOT_MEASURED_MDB
+    const value = heard ? Math.max(levelMdb, this.lowestMdb) : this.lowestMdb
+    const full = this.levels.length === this.most
+    const above = full && value >= this.lowestMdb + RISE_MDB && value >= this.floorMdb() + RISE_MDB
+    const rising = full && this.risesBy(Math.min(value, this.levels.at(-1)!))
+    const begins = (above && !this.above) || (rising && !this.rising)
     this.above = above
+    this.rising = rising
     this.levels.push(value)
     if (this.levels.length > this.most) this.levels.shift()
     return begins
   }
 
   private floorMdb(): number {
-    const sorted = this.levels.slice(0, this.until).sort((a, b) => a - b)
-    const middle = sorted.length / 2
-    const median = (sorted[Math.ceil(middle) - 1]! + sorted[Math.floor(middle)]!) / 2
-    return Math.max(median, this.lowestMdb)
+    return medianOf(this.levels.slice(0, this.until))
   }
+
+  private risesBy(valueMdb: number): boolean {
+    if (valueMdb < this.lowestMdb + RISE_MDB) return false
+    const count = this.levels.length
+    return valueMdb >= medianOf(this.levels.slice(count - this.againFrom, count - this.againTo)) + AGAIN_MDB
+  }
+}
+
+function medianOf(levels: number[]): number {
+  levels.sort((a, b) => a - b)
+  const middle = levels.length / 2
+  return (levels[Math.ceil(middle) - 1]! + levels[Math.floor(middle)]!) / 2
 }

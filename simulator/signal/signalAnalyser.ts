@@ -22,11 +22,13 @@ const PITCH_FROM_MS = 40
 /** ... to here, and reported with the frame that ends at PITCH_BY_MS. */
 const PITCH_TO_MS = 250
 const PITCH_BY_MS = 260
+/** One pluck begins on several channels at almost the same time. */
+const LOOKS_APART_MS = 30
 /** Channels this far below the loudest only hear it. */
 const ALONG_DB = 10
 /** Below -110 dBFS nothing is a floor: it is quieter than a 16 bit recording can be. */
 const LOWEST_FLOOR_DBFS = -110
-const HUM_EVERY_MS = 500
+const HUM_EVERY_MS = 400
 
 export interface SignalSettings extends FrameSettings {
   mainsHz: 50 | 60
@@ -69,7 +71,7 @@ export class SignalAnalyser {
     this.decimators = offsetDb.map(() => new HumDecimator(rateHz, longest))
     const humLength = Math.ceil((this.decimators[0]!.rateHz * (noiseStretchMs + 100)) / 1000)
     this.humHistory = offsetDb.map(() => new SampleHistory(humLength))
-    this.quiet = new QuietStretch(offsetDb.length, noiseStretchMs / frameMs, HUM_EVERY_MS / frameMs)
+    this.quiet = new QuietStretch(offsetDb.length, frameMs, noiseStretchMs, HUM_EVERY_MS)
   }
 
   /** The next frame, n: numbers count from firstFrame, its samples are those from frameStart(n) to frameStart(n + 1). */
@@ -78,7 +80,9 @@ export class SignalAnalyser {
     const frame = this.frames.analyse(channels, count)
     this.keep(count)
     const begins = frame.levelMdb.map((level, channel) => this.onsets[channel]!.push(level)).some(Boolean)
-    if (begins) this.looks.push({ frame: frameNo })
+    const last = this.looks.at(-1)
+    if (begins && (!last || (frameNo - last.frame) * this.settings.frameMs >= LOOKS_APART_MS))
+      this.looks.push({ frame: frameNo })
     return { frame, events: [...this.pitchEvents(frameNo), ...this.humEvents(frameNo, frame)] }
   }
 
