@@ -23,10 +23,13 @@ export async function run(args) {
   const vitest = path.join(projectDir, 'node_modules', 'vitest', 'vitest.mjs')
   const reporters = ['--reporter=default', '--reporter=json', `--outputFile.json=${reportFile}`]
   const exitCode = await runForeground([vitest, 'run', ...reporters, ...args], process.env)
-  const { passed, failed } = countTests(JSON.parse(readFileSync(reportFile, 'utf8')))
+  const count = countTests(JSON.parse(readFileSync(reportFile, 'utf8')))
+  // An error outside every test ends the run with a failure that no test carries.
+  const failed = exitCode === 0 ? count.failed : Math.max(count.failed, 1)
+  const { passed } = count
   writeFileSync(countFile, `${passed} passed, ${failed} failed\n`)
   printLine(`${passed} passed, ${failed} failed`)
-  return exitCode !== 0 || failed > 0 || passed === 0 ? 1 : 0
+  return failed > 0 || passed === 0 ? 1 : 0
 }
 
 /**

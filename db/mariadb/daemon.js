@@ -5,7 +5,6 @@ import path from 'node:path'
 import { setTimeout as wait } from 'node:timers/promises'
 import { StartFault } from '../fault.js'
 import { pathOfCommand } from '../packages.js'
-import { requireFreePort } from '../ports.js'
 import { findProcesses, waitForEnd } from '../processes.js'
 import { REDO_LOG_BYTES, isRoot, saysDiskIsFull } from './prepare.js'
 
@@ -70,7 +69,6 @@ function daemonArgs(instance, initFile) {
  * @returns {Promise<Daemon>}
  */
 export async function startDaemon(instance, statements, portSetting) {
-  await requireFreePort(instance.port, HOST, portSetting)
   const initFile = path.join(instance.root, 'start.sql')
   writeFileSync(initFile, `${statements.map((statement) => `${statement};`).join('\n')}\n`, { mode: 0o600 })
   writeFileSync(instance.log, '')
@@ -84,7 +82,8 @@ export async function startDaemon(instance, statements, portSetting) {
     /** @type {Error | undefined} */
     let failure
     child.once('error', (error) => (failure = error))
-    child.once('exit', () => (failure ??= faultFromLog(instance, portSetting)))
+    const endedEarly = () => void (failure ??= faultFromLog(instance, portSetting))
+    child.once('exit', endedEarly)
     const deadline = performance.now() + START_PATIENCE_MS
     while (!(await greets(instance.port))) {
       if (failure) throw failure
@@ -93,6 +92,7 @@ export async function startDaemon(instance, statements, portSetting) {
       await wait(15)
     }
     if (failure) throw failure
+    child.off('exit', endedEarly)
     return { pid: child.pid ?? 0, port: instance.port }
   } finally {
     rmSync(initFile, { force: true })

@@ -1,4 +1,5 @@
 import { withLock } from '../lock.js'
+import { requireFreePort } from '../ports.js'
 import { printLine } from '../progress.js'
 import { findDaemon, startDaemon, stopDaemon, HOST } from './daemon.js'
 import { prepareDataFolder } from './prepare.js'
@@ -55,7 +56,10 @@ export async function joinDatabase(instance, secrets, options = {}) {
   } = options
   return withLock(instance.root, async () => {
     const running = findDaemon(instance)
-    if (!running) await prepareDataFolder(instance, print)
+    if (!running) {
+      await requireFreePort(instance.port, HOST, portSetting)
+      await prepareDataFolder(instance, print)
+    }
     const daemon =
       running ??
       (await startDaemon(

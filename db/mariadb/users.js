@@ -1,4 +1,4 @@
-import { mkdirSync, readdirSync, rmSync, writeFileSync } from 'node:fs'
+import { existsSync, mkdirSync, readdirSync, rmSync, writeFileSync } from 'node:fs'
 import path from 'node:path'
 import { startTimeOf } from '../processes.js'
 
@@ -21,6 +21,7 @@ export function signOff(instance) {
 
 /** Processes that use the server; the files of dead ones are removed. @param {Instance} instance */
 export function livingUsers(instance) {
+  if (!existsSync(instance.usersDir)) return []
   return readdirSync(instance.usersDir).filter((name) => {
     const [pid, startTime] = name.split('-')
     if (startTimeOf(Number(pid)) === startTime) return true

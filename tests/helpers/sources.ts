@@ -7,10 +7,14 @@ export const projectDir = path.resolve(fileURLToPath(new URL('../..', import.met
 
 /** Paths below the project of every file that git tracks or would add. */
 export function projectFiles(): string[] {
-  const listed = execFileSync('git', ['ls-files', '--cached', '--others', '--exclude-standard', '-z'], {
-    cwd: projectDir,
-    encoding: 'utf8',
-  })
+  const listed = execFileSync(
+    'git',
+    ['-c', 'safe.directory=*', 'ls-files', '--cached', '--others', '--exclude-standard', '-z'],
+    {
+      cwd: projectDir,
+      encoding: 'utf8',
+    },
+  )
   return [...new Set(listed.split('\0'))]
     .filter((file) => file !== '' && existsSync(path.join(projectDir, file)))
     .sort()
