@@ -130,7 +130,7 @@ export function makeModelledSource(options: ModelledSourceOptions): ModelledSour
       return placed.parts
     },
     start(order) {
-      tuning = order.expectedHz.map((pitches, s) => pitches[0] ?? STANDARD_TUNING[s]!)
+      tuning = STANDARD_TUNING.map((standardHz, s) => order.expectedHz[s]?.[0] ?? standardHz)
       noiseStretchMs = order.noiseStretchMs
       placed.bench.restart(tuning, noiseStretchMs)
       hand.restart()
