@@ -1,4 +1,5 @@
 import { createServer } from 'node:net'
+import { setTimeout as wait } from 'node:timers/promises'
 import { StartFault, codeOf } from './fault.js'
 
 /** @param {number} port @param {string} host @returns {Promise<string | undefined>} the error code that keeps it from being used */
@@ -14,9 +15,15 @@ export function portProblem(port, host) {
  * @param {number} port
  * @param {string} host
  * @param {string} setting name of the setting that moves it
+ * @param {{ patienceMs?: number }} [options] how long its last holder, known to be ending, may still take
  */
-export async function requireFreePort(port, host, setting) {
-  const problem = await portProblem(port, host)
+export async function requireFreePort(port, host, setting, { patienceMs = 0 } = {}) {
+  const deadline = performance.now() + patienceMs
+  let problem = await portProblem(port, host)
+  while (problem === 'EADDRINUSE' && performance.now() < deadline) {
+    await wait(20)
+    problem = await portProblem(port, host)
+  }
   if (problem === undefined) return
   if (problem === 'EADDRINUSE')
     throw new StartFault(

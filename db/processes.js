@@ -11,7 +11,9 @@ export function startTimeOf(pid) {
   try {
     const stat = readFileSync(`/proc/${pid}/stat`, 'utf8')
     const fields = stat.slice(stat.lastIndexOf(')') + 2).split(' ')
-    return fields[0] === 'Z' ? undefined : fields[19]
+    // A killed process keeps its files and ports until the last of its threads is gone.
+    const isGone = fields[0] === 'Z' && readdirSync(`/proc/${pid}/task`).length <= 1
+    return isGone ? undefined : fields[19]
   } catch {
     return undefined
   }

@@ -57,7 +57,8 @@ export async function joinDatabase(instance, secrets, options = {}) {
   return withLock(instance.root, async () => {
     const running = findDaemon(instance)
     if (!running) {
-      await requireFreePort(instance.port, HOST, portSetting)
+      // A killed server may still be letting go of it.
+      await requireFreePort(instance.port, HOST, portSetting, { patienceMs: 1000 })
       await prepareDataFolder(instance, print)
     }
     const daemon =
