@@ -117,7 +117,8 @@ export function createBenchClient(options: BenchClientOptions): BenchClient {
     dropSocket()
     source.serverSeen?.(false)
     state = 'waiting'
-    const waitMs = Math.min(backoff.most, backoff.first * 2 ** Math.min(attempts, 16)) * (0.5 + 0.5 * jitter())
+    const waitMs =
+      Math.min(backoff.most, backoff.first * 2 ** Math.min(attempts, 16)) * (0.5 + 0.5 * jitter())
     attempts += 1
     cancelConnect()
     cancelConnect = clock.after(Math.max(waitMs, leastMs), connect)
@@ -242,7 +243,11 @@ export function createBenchClient(options: BenchClientOptions): BenchClient {
         return
       }
       verifiedUntil = answer.validUntil
-      log(answer.passed ? `Verified until ${answer.validUntil ?? '?'}` : `Not verified: ${answer.reasons.join('; ')}`)
+      log(
+        answer.passed
+          ? `Verified until ${answer.validUntil ?? '?'}`
+          : `Not verified: ${answer.reasons.join('; ')}`,
+      )
     })
   }
 

@@ -4,8 +4,8 @@ import type { BenchSource, SourceStep } from '../sources/source.ts'
 import { makeHeldFrames } from './heldFrames.ts'
 import type { HeldFrames } from './heldFrames.ts'
 
-/** A stalled bench makes up for at most so much time, s; what is older is lost as it would be on real hardware. */
-const CATCH_UP_S = 2
+/** A stalled bench makes up for at most so much time, s; what is older is lost. */
+const CATCH_UP_S = 60
 /** A source that runs faster than the clock stays so close to the server that its prompts are never stale, s. */
 const FAST_AHEAD_S = 0.4
 /** Frames that are kept for a server that is away; beyond it the bench measures no further. Twenty minutes at 10 ms. */
@@ -52,7 +52,8 @@ export function makeFrameRun(
   function due(): number {
     if (!source.realTime) return serverNext + 2 * MAX_BATCH_FRAMES - held.end()
     const scale = source.timeScale ?? 1
-    const ahead = scale > 1 ? serverNext + Math.ceil((FAST_AHEAD_S * 1000) / source.frameMs) : Number.MAX_SAFE_INTEGER
+    const ahead =
+      scale > 1 ? serverNext + Math.ceil((FAST_AHEAD_S * 1000) / source.frameMs) : Number.MAX_SAFE_INTEGER
     return Math.min(Math.floor(credit), ahead - held.end())
   }
 

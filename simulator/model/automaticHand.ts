@@ -4,8 +4,7 @@ import { makeRandom } from './random.ts'
 
 /** What a hand can do at the bench. */
 export type HandAct =
-  | { kind: 'plug' | 'unplug' | 'damp' | 'wiggle' | 'pedal' }
-  | { kind: 'pluck'; stringNo: number }
+  { kind: 'plug' | 'unplug' | 'damp' | 'wiggle' | 'pedal' } | { kind: 'pluck'; stringNo: number }
 
 /** What a person sees and hears without the screen. */
 export interface HandSight {

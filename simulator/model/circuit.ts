@@ -119,7 +119,8 @@ export function compileCircuit(
   const nodes = inputNodes(parts)
   const gain = parts.preamp.gain * parts.preamp.volume
   const own = parts.elements.map(
-    (element, e) => gain * elementDivider(parts, e) * element.sensitivity * element.seating * element.polarity,
+    (element, e) =>
+      gain * elementDivider(parts, e) * element.sensitivity * element.seating * element.polarity,
   )
   const nodeCount = parts.circuit === 'parallel' ? 1 : 6
   const output = parts.preamp.outputNoise ** 2
@@ -151,7 +152,9 @@ function pathsOf(
   const heard = parts.crosstalk[stringIndex]!.map((ratio, e) => ratio * own[e]!)
 
   const powersAt = (frequencyHz: number): number[] => {
-    const amplitude = heard.map((value, e) => value * Math.sqrt(highPassPower(frequencyHz, nodes[e]!.cornerHz)))
+    const amplitude = heard.map(
+      (value, e) => value * Math.sqrt(highPassPower(frequencyHz, nodes[e]!.cornerHz)),
+    )
     const channels = parts.leads.map((e) => amplitude[e]! * amplitude[e]!)
     return [...channels, jackPower(amplitude, stringIndex)]
   }
@@ -205,7 +208,8 @@ function mainsAt(
     })
     // the field has the same phase everywhere, so the six add as amplitudes
     const sum = amplitude.reduce((total, value) => total + value, 0)
-    const channels = parts.circuit === 'parallel' ? amplitude.map(() => sum) : parts.leads.map((e) => amplitude[e]!)
+    const channels =
+      parts.circuit === 'parallel' ? amplitude.map(() => sum) : parts.leads.map((e) => amplitude[e]!)
     ;[...channels, sum].forEach((value, point) => addHarmonic(points[point]!, frequencyHz, i === 0, value))
   })
   return points

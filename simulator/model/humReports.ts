@@ -16,12 +16,7 @@ export interface HumAtPoint {
 }
 
 export interface HumReports {
-  report(
-    frameNo: number,
-    events: BenchEvent[],
-    still: boolean,
-    humAt: (point: number) => HumAtPoint,
-  ): void
+  report(frameNo: number, events: BenchEvent[], still: boolean, humAt: (point: number) => HumAtPoint): void
   restart(noiseStretchMs: number): void
 }
 

@@ -46,7 +46,10 @@ interface Break {
 }
 
 /** Voltage and current of the supply with the switch closed. */
-export function loadedSupply(parts: InstrumentParts, chargeShareUsed = 0): { batteryV: number; currentA: number } {
+export function loadedSupply(
+  parts: InstrumentParts,
+  chargeShareUsed = 0,
+): { batteryV: number; currentA: number } {
   const { supply, preamp } = parts
   if (!supply.connected) return { batteryV: 0, currentA: 0 }
   const openV = supply.batteryV - 2 * chargeShareUsed

@@ -173,7 +173,8 @@ export function makeModelledBench(options: ModelledBenchOptions): ModelledBench 
       }
       const draw = random.noise.normal()
       const drawA = 0.8 * draw + 0.6 * random.noise.normal()
-      flat[point]! += noise.flatPower * chiSquareRatio(noise.flatDof, draw) + loop.flat + loop.fundamental * swing
+      flat[point]! +=
+        noise.flatPower * chiSquareRatio(noise.flatDof, draw) + loop.flat + loop.fundamental * swing
       a[point]! += noise.aPower * chiSquareRatio(noise.aDof, drawA) + loop.a + loop.fundamentalA * swing
       flat[point]! *= bench.gain[point]!
       a[point]! *= bench.gain[point]!
@@ -227,17 +228,24 @@ export function makeModelledBench(options: ModelledBenchOptions): ModelledBench 
   function report(state: JackFrame, frameNo: number, events: BenchEvent[]): void {
     const noise = state.powered ? live : null
     if (reads.pitch) {
-      pitches.report(frameNo, events, (stringNo, point) => {
-        const voice = voices[stringNo - 1]
-        if (!voice || !state.powered) return 0
-        const lost = point === JACK ? state.signalLost : 0
-        return powerThrough(voice, circuit.strings[stringNo - 1]!.flat[point]!) * (1 - lost)
-      }, (point) => (noise?.[point] ?? bench.noise).flatPower, tuning)
+      pitches.report(
+        frameNo,
+        events,
+        (stringNo, point) => {
+          const voice = voices[stringNo - 1]
+          if (!voice || !state.powered) return 0
+          const lost = point === JACK ? state.signalLost : 0
+          return powerThrough(voice, circuit.strings[stringNo - 1]!.flat[point]!) * (1 - lost)
+        },
+        (point) => (noise?.[point] ?? bench.noise).flatPower,
+        tuning,
+      )
     }
     if (reads.hum) {
       const still = state.plugged && !state.wiggling && isQuiet(state)
       hums.report(frameNo, events, still, (point) => {
-        const mains = state.powered && !(point === JACK && state.signalLost >= 0.5) ? circuit.mains[point]!.hum : 0
+        const mains =
+          state.powered && !(point === JACK && state.signalLost >= 0.5) ? circuit.mains[point]!.hum : 0
         return {
           power: (mains + loop.hum) * bench.gain[point]!,
           density: (noise?.[point] ?? bench.noise).flatPower / 20_000,
@@ -300,7 +308,12 @@ export function makeModelledBench(options: ModelledBenchOptions): ModelledBench 
       report(state, frameNo, events)
       if (pedalPressed) {
         pedalPressed = false
-        events.push({ kind: 'pedal', frame: frameNo, startTenthMs: frameNo * frameMs * 10, durationTenthMs: 1000 })
+        events.push({
+          kind: 'pedal',
+          frame: frameNo,
+          startTenthMs: frameNo * frameMs * 10,
+          durationTenthMs: 1000,
+        })
       }
       const frame = frameOf(state, clipped)
       moveVoices()

@@ -57,9 +57,7 @@ function rawA(frequencyHz: number): number {
   const f2 = frequencyHz * frequencyHz
   const gain =
     (12194.2171 ** 2 * f2 * f2) /
-    ((f2 + 20.599 ** 2) *
-      Math.sqrt((f2 + 107.65265 ** 2) * (f2 + 737.86223 ** 2)) *
-      (f2 + 12194.2171 ** 2))
+    ((f2 + 20.599 ** 2) * Math.sqrt((f2 + 107.65265 ** 2) * (f2 + 737.86223 ** 2)) * (f2 + 12194.2171 ** 2))
   return gain * gain
 }
 

@@ -53,7 +53,10 @@ export function makePitchReports(channelKind: ChannelKind, frameMs: number, rand
         let heardNo = stringNo
         let heard = own
         for (let other = 1; other <= 6; other++) {
-          const power = powerAt(other, loudestPoint((at) => powerAt(other, at)))
+          const power = powerAt(
+            other,
+            loudestPoint((at) => powerAt(other, at)),
+          )
           if (power > own * OTHER_RATIO && power > heard) {
             heardNo = other
             heard = power
