@@ -37,5 +37,5 @@ export const ownerEnvironment = (settings, addresses) => ({
 /** @param {string} inside path below dist */
 export const built = (inside) => path.join(projectDir, 'dist', inside)
 
-/** Tools that change tables or rights. */
-export const ownerTools = ['migrate', 'seed']
+/** Tools of server/cli that change tables or rights. */
+export const ownerTools = ['migrate']

@@ -36,10 +36,12 @@ export async function run() {
   /** @type {ReturnType<typeof startShown>[]} */
   const children = []
   try {
-    const ownerEnv = ownerEnvironment(serverSettings, database)
-    for (const tool of ['migrate', 'seed'])
+    for (const [tool, env] of /** @type {const} */ ([
+      ['migrate', ownerEnvironment(serverSettings, database)],
+      ['seed', appEnvironment(serverSettings, database)],
+    ]))
       await runChild(process.execPath, [built(`server/cli/${tool}.js`)], {
-        env: ownerEnv,
+        env,
         signal: ending.signal,
         show: true,
         what: tool,

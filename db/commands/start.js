@@ -92,24 +92,16 @@ function makeDataFolder(dataDir) {
 
 /** @param {Settings} settings @param {OpenDatabase} database @param {AbortSignal} signal */
 async function prepareTables(settings, database, signal) {
-  const env = ownerEnvironment(settings, database)
-  await step(
-    'Bringing the tables up to date',
-    () =>
-      runChild(process.execPath, [built('server/cli/migrate.js')], {
-        env,
-        signal,
-        what: 'Bringing the tables up to date',
-      }),
-    { quietMs: 1500 },
-  )
-  if (settings.mode === 'production') return
-  await runChild(process.execPath, [built('server/cli/seed.js')], {
-    env,
-    signal,
-    show: true,
-    what: 'Making the demo records',
-  })
+  /** @param {string} title @param {string} tool @param {NodeJS.ProcessEnv} env */
+  const runTool = (title, tool, env) =>
+    step(
+      title,
+      () => runChild(process.execPath, [built(`server/cli/${tool}.js`)], { env, signal, what: title }),
+      { quietMs: 1500 },
+    )
+  await runTool('Bringing the tables up to date', 'migrate', ownerEnvironment(settings, database))
+  if (settings.mode === 'demo')
+    await runTool('Making the demo records', 'seed', appEnvironment(settings, database))
 }
 
 /** @param {Settings} settings @param {OpenDatabase} database @param {AbortSignal} signal @param {Undo} onEnd */
