@@ -11,7 +11,13 @@ let auth: AuthService
 beforeAll(async () => {
   test = await createTestApp()
   const { knex, sessions, passwords, clock } = test
-  auth = createAuthService({ knex, sessions, passwords, guard: createSignInGuard(knex, clock.now), now: clock.now })
+  auth = createAuthService({
+    knex,
+    sessions,
+    passwords,
+    guard: createSignInGuard(knex, clock.now),
+    now: clock.now,
+  })
 })
 afterAll(() => test.close())
 
@@ -31,7 +37,9 @@ describe('setRoles()', () => {
     const again = await signedInAgent(test.app, person.email)
     const { body } = await again.get(`${API}/auth/me`).expect(200)
     expect(body.person.roles).toEqual(['returnsDesk'])
-    const entries = await test.knex('audit_entries').where({ action: 'user.rolesChanged', subject_id: person.id })
+    const entries = await test
+      .knex('audit_entries')
+      .where({ action: 'user.rolesChanged', subject_id: person.id })
     expect(entries).toMatchObject([{ actor: 'test admin', subject: 'user' }])
   })
 

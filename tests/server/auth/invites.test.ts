@@ -37,7 +37,11 @@ describe('one-time link', () => {
     await signedInAgent(test.app, email)
     expect((await accept(token, 'another password!').expect(410)).body.code).toBe('invite.invalid')
     await look(token).expect(410)
-    const actions = await test.knex('audit_entries').where({ subject_id: userId }).orderBy('id').pluck('action')
+    const actions = await test
+      .knex('audit_entries')
+      .where({ subject_id: userId })
+      .orderBy('id')
+      .pluck('action')
     expect(actions).toEqual(['user.created', 'password.set', 'session.opened', 'session.opened'])
   })
 

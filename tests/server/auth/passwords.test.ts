@@ -61,7 +61,9 @@ describe('createPasswords()', () => {
 
   it('refuses with a wait when too many are waiting', async () => {
     const busy = createPasswords({ bcryptCost: 4 })
-    const results = await Promise.allSettled(Array.from({ length: 60 }, () => busy.hash('correct horse battery')))
+    const results = await Promise.allSettled(
+      Array.from({ length: 60 }, () => busy.hash('correct horse battery')),
+    )
     await busy.close()
     const refused = results.filter(({ status }) => status === 'rejected')
     expect(refused).toHaveLength(10)

@@ -27,7 +27,8 @@ const refresh = (refreshToken: string) =>
 const successor = async (refreshToken: string) =>
   setCookie(await refresh(refreshToken).expect(200), REFRESH_COOKIE)!
 
-const me = (token: string) => request(test.app).get(`${API}/auth/me`).set('Cookie', `${TOKEN_COOKIE}=${token}`)
+const me = (token: string) =>
+  request(test.app).get(`${API}/auth/me`).set('Cookie', `${TOKEN_COOKIE}=${token}`)
 
 describe('POST /auth/refresh', () => {
   it('gives a new pair of the same session, long after the short token has run out', async () => {
@@ -63,7 +64,9 @@ describe('POST /auth/refresh', () => {
     await me(setCookie(thief, TOKEN_COOKIE)!).expect(401)
     const again = await refresh(setCookie(thief, REFRESH_COOKIE)!).expect(401)
     expect(again.body.code).toBe('sign-in.reused')
-    const entries = await test.knex('audit_entries').where({ action: 'session.reused', subject_id: sessionId })
+    const entries = await test
+      .knex('audit_entries')
+      .where({ action: 'session.reused', subject_id: sessionId })
     expect(entries).toHaveLength(1)
   })
 
@@ -84,7 +87,10 @@ describe('POST /auth/refresh', () => {
     const { refreshToken, sessionId } = await firstToken()
     const answers = await Promise.all(Array.from({ length: 10 }, () => refresh(refreshToken)))
     expect(answers.map(({ status }) => status)).toEqual(Array(10).fill(200))
-    const generations = await test.knex('session_tokens').where({ session_id: sessionId }).distinct('generation')
+    const generations = await test
+      .knex('session_tokens')
+      .where({ session_id: sessionId })
+      .distinct('generation')
     expect(generations.map(({ generation }) => generation as number).toSorted()).toEqual([1, 2])
   })
 

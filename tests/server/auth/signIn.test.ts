@@ -100,7 +100,10 @@ describe('POST /auth/sign-in', () => {
     const person = await addPerson(test, ['installer'])
     const { createPasswords } = await import('../../../server/auth/passwords.ts')
     const older = createPasswords({ bcryptCost: 5 })
-    await test.knex('users').where({ id: person.id }).update({ password_hash: await older.hash(PASSWORD) })
+    await test
+      .knex('users')
+      .where({ id: person.id })
+      .update({ password_hash: await older.hash(PASSWORD) })
     await older.close()
     await signIn(person.email, PASSWORD).expect(200)
     const row = await test.knex('users').where({ id: person.id }).first('password_hash')

@@ -19,7 +19,9 @@ describe('waitSeconds()', () => {
   })
 
   it('doubles from one second on', () => {
-    const waits = [0, 1, 2, 3, 4, 5].map((more) => waitSeconds('account', after(FREE_FAILURES.account + more), at))
+    const waits = [0, 1, 2, 3, 4, 5].map((more) =>
+      waitSeconds('account', after(FREE_FAILURES.account + more), at),
+    )
     expect(waits).toEqual([1, 2, 4, 8, 16, 32])
   })
 

@@ -28,10 +28,7 @@ let lastAddress = 0
 const newAddress = () => `10.1.${Math.floor(++lastAddress / 250)}.${(lastAddress % 250) + 1}`
 
 const tryAt = (address: string, email: string, password: string) =>
-  request(test.app)
-    .post(`${API}/auth/sign-in`)
-    .set('X-Forwarded-For', address)
-    .send({ email, password })
+  request(test.app).post(`${API}/auth/sign-in`).set('X-Forwarded-For', address).send({ email, password })
 
 async function failUntilWait(address: string, email: string): Promise<number> {
   for (let no = 0; no < 50; no++) {
