@@ -189,6 +189,8 @@ export const MeasuredRun = z.object({
     a: Reading,
     hum: Reading,
     mainsHz: z.int(),
+    /** where noise and hum were read: 0 = the jack, 1..6 = that element, the loudest */
+    at: z.int().min(0).max(6).nullable().optional(),
     fromFrame: z.int().nullable(),
     toFrame: z.int().nullable(),
   }),

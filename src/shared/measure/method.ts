@@ -1,0 +1,22 @@
+import type { BenchEvent, Frame } from '../contract/frames.ts'
+import type { MeasuredRun } from '../contract/measured.ts'
+import type { RunAction, RunSetup } from '../contract/runs.ts'
+import { startRun, takeAction, takeFrame, viewRun, type RunState } from './runState.ts'
+
+export * from './constants.ts'
+
+/** The method that new runs are measured and judged by. */
+export const METHOD = 1
+
+/** What a method is to whoever runs it. */
+export interface MethodCode {
+  startRun(setup: RunSetup): RunState
+  takeFrame(state: RunState, frame: Frame, events: readonly BenchEvent[]): void
+  takeAction(state: RunState, action: RunAction): void
+  viewRun(state: RunState): MeasuredRun
+}
+
+/** Every method that a stored run can name. A new method gets a new entry; the old code stays callable. */
+export const methods: Record<number, MethodCode> = {
+  1: { startRun, takeFrame, takeAction, viewRun },
+}
