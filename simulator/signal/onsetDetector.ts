@@ -10,6 +10,8 @@ const RISE_MDB = 10_000
 const AGAIN_MDB = 4_000
 const AGAIN_FROM_MS = 60
 const AGAIN_TO_MS = 20
+/** Until then a rise is still the attack of the last onset. */
+const ATTACK_MS = 80
 
 /**
  * Tells when a channel begins to sound: the first frame 10 dB above the median of the frames 200 to 40 ms before it,
@@ -24,6 +26,8 @@ export class OnsetDetector {
   private readonly againTo: number
   private above = false
   private rising = false
+  private readonly attackFrames: number
+  private sinceOnset = Infinity
 
   /** `lowestMdb`: no floor is taken to be lower than this, so that digital silence is not a floor. */
   constructor(frameMs: FrameMs, lowestMdb: number) {
@@ -31,6 +35,7 @@ export class OnsetDetector {
     this.until = (FLOOR_FROM_MS - FLOOR_TO_MS) / frameMs
     this.againFrom = AGAIN_FROM_MS / frameMs
     this.againTo = AGAIN_TO_MS / frameMs
+    this.attackFrames = ATTACK_MS / frameMs
     this.lowestMdb = lowestMdb
   }
 
@@ -41,7 +46,9 @@ export class OnsetDetector {
     const full = this.levels.length === this.most
     const above = full && value >= this.lowestMdb + RISE_MDB && value >= this.floorMdb() + RISE_MDB
     const rising = full && this.risesBy(Math.min(value, this.levels.at(-1)!))
-    const begins = (above && !this.above) || (rising && !this.rising)
+    const again = rising && !this.rising && this.sinceOnset >= this.attackFrames
+    const begins = (above && !this.above) || again
+    this.sinceOnset = begins ? 0 : this.sinceOnset + 1
     this.above = above
     this.rising = rising
     this.levels.push(value)

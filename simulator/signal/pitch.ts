@@ -20,6 +20,11 @@ const PEAK_RANGE_DB = 40
 const FUNDAMENTAL_RANGE_DB = 30
 /** Of pitches that explain the same, the highest is the string: every lower one is only a sub-multiple of it. */
 const SAME_SHARE = 0.03
+/**
+ * Parts of the power from which the partials at every second, third or fourth place are a string of their own and
+ * what lies between is another one that rings along: no place of plucking gives one string such a row.
+ */
+const OWN_ROW_POWER: Readonly<Record<number, number>> = { 2: 0.968, 3: 0.9, 4: 0.9 }
 /** A second string this far below the first adds less than 0.15 dB to a level. */
 const SECOND_RANGE_DB = 15
 const LEAST_CONFIDENCE = 0.5
@@ -166,16 +171,29 @@ function nearest(peaks: readonly Peak[], hz: number, toleranceHz: number): Peak 
 function highestOfBest(candidates: readonly Candidate[]): Candidate | null {
   const best = candidates[0]
   if (!best) return null
+  const bestPower = powerOf(peaksOf(best))
   return candidates
-    .filter((candidate) => candidate.share >= best.share - SAME_SHARE)
+    .filter((candidate) => {
+      if (candidate.share >= best.share - SAME_SHARE) return true
+      const multiple = Math.round(candidate.hz / best.hz)
+      const least = near(candidate.hz / multiple, best.hz, 0.01) ? OWN_ROW_POWER[multiple] : undefined
+      return least !== undefined && powerOf(peaksOf(candidate)) >= least * bestPower
+    })
     .reduce((highest, candidate) => (candidate.hz > highest.hz ? candidate : highest))
+}
+
+function powerOf(peaks: readonly Peak[]): number {
+  return peaks.reduce((sum, peak) => sum + peak.power, 0)
+}
+
+function near(a: number, b: number, within: number): boolean {
+  return Math.abs(a / b - 1) < within
 }
 
 /** A second string: its fundamental and one more partial, unexplained by the first, and loud enough to matter. */
 function secondOf(peaks: readonly Peak[], first: Candidate, explained: ReadonlySet<Peak>): Candidate | null {
   const left = peaks.filter((peak) => !explained.has(peak))
   if (left.length === 0) return null
-  const powerOf = (list: readonly Peak[]) => list.reduce((sum, peak) => sum + peak.power, 0)
   const least = powerOf(peaksOf(first)) * 10 ** (-SECOND_RANGE_DB / 10)
   const candidates = candidatesOf(left, left).filter((candidate) => {
     const own = peaksOf(candidate)
@@ -187,13 +205,12 @@ function secondOf(peaks: readonly Peak[], first: Candidate, explained: ReadonlyS
 
 /** Pitches of the expected ones that are whole multiples of the one found, and stand out of its row of partials. */
 function hiddenPitch(first: Candidate, expectedHz: readonly (readonly number[])[]): number | null {
-  const near = (a: number, b: number) => Math.abs(a / b - 1) < 0.03
   for (const own of expectedHz) {
-    if (!own.some((hz) => near(first.hz, hz))) continue
+    if (!own.some((hz) => near(first.hz, hz, 0.03))) continue
     for (const other of expectedHz)
       for (const hz of other) {
         const multiple = Math.round(hz / first.hz)
-        if (multiple < 2 || multiple > 4 || !near(hz / multiple, first.hz)) continue
+        if (multiple < 2 || multiple > 4 || !near(hz / multiple, first.hz, 0.03)) continue
         const stands = own === other ? octaveStandsOut(first, multiple) : rowStandsOut(first, multiple)
         if (stands) return multiple * first.hz
       }

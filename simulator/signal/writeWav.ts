@@ -13,8 +13,12 @@ export function writeWav(path: string, channels: readonly Float64Array[], rateHz
   const bytes = Buffer.alloc(HEADER_BYTES + count * block + ((count * block) % 2))
   writeHeader(bytes, channels.length, rateHz, count * block)
   channels.forEach((samples, channel) => {
-    for (let i = 0, at = HEADER_BYTES + channel * 3; i < count; i++, at += block)
-      bytes.writeIntLE(Math.max(-SCALE, Math.min(SCALE - 1, Math.round(samples[i]! * SCALE))), at, 3)
+    for (let i = 0, at = HEADER_BYTES + channel * 3; i < count; i++, at += block) {
+      const code = Math.max(-SCALE, Math.min(SCALE - 1, Math.round(samples[i]! * SCALE)))
+      bytes[at] = code & 0xff
+      bytes[at + 1] = (code >> 8) & 0xff
+      bytes[at + 2] = (code >> 16) & 0xff
+    }
   })
   writeFileSync(path, bytes)
 }
