@@ -1,7 +1,16 @@
 import type { BenchEvent, Frame } from '../contract/frames.ts'
 import type { MeasuredRun } from '../contract/measured.ts'
-import type { RunAction, RunSetup } from '../contract/runs.ts'
-import { startRun, takeAction, takeFrame, viewRun, type RunState } from './runState.ts'
+import type { RunAction, RunActionBody, RunSetup } from '../contract/runs.ts'
+import {
+  changeCount,
+  isFinished,
+  refusalOf,
+  startRun,
+  takeAction,
+  takeFrame,
+  viewRun,
+  type RunState,
+} from './runState.ts'
 
 export * from './constants.ts'
 
@@ -14,9 +23,14 @@ export interface MethodCode {
   takeFrame(state: RunState, frame: Frame, events: readonly BenchEvent[]): void
   takeAction(state: RunState, action: RunAction): void
   viewRun(state: RunState): MeasuredRun
+  /** why an action would be refused now, in words for the person; null when it fits */
+  refusalOf(state: RunState, action: RunActionBody): string | null
+  /** grows with every change that a screen shows */
+  changeCount(state: RunState): number
+  isFinished(state: RunState): boolean
 }
 
 /** Every method that a stored run can name. A new method gets a new entry; the old code stays callable. */
 export const methods: Record<number, MethodCode> = {
-  1: { startRun, takeFrame, takeAction, viewRun },
+  1: { startRun, takeFrame, takeAction, viewRun, refusalOf, changeCount, isFinished },
 }
