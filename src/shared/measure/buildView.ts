@@ -158,7 +158,8 @@ function warningsOf(state: RunState): MeasuredRun['warnings'] {
   return warnings
 }
 
-function promptOf(state: RunState): { prompt: PromptKey; stringNo: number | null } {
+/** What the one sentence on the screen asks for now, and for which string. Constant work, unlike the whole view. */
+export function promptOf(state: RunState): { prompt: PromptKey; stringNo: number | null } {
   switch (state.phase) {
     case 'unplugged':
       return { prompt: state.jack.unpluggedDone ? 'plugIn' : 'leaveUnplugged', stringNo: null }

@@ -8,6 +8,7 @@ import { createState, isFinished as finished, type RunState } from './state.ts'
 
 export type { RunState } from './state.ts'
 export { MeasureRefusal } from './MeasureRefusal.ts'
+export { promptOf } from './buildView.ts'
 export { noiseStretchMsOf } from './runPlan.ts'
 
 /** State of a run before its first frame. The set-up is kept, not copied: do not change it. */
