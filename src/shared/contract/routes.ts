@@ -159,7 +159,7 @@ export const ROUTES = {
     path: '/scan/:code',
     access: 'read',
     summary: 'What a scanned code belongs to',
-    params: z.object({ code: z.string().min(1).max(64) }),
+    params: z.object({ code: z.string().min(1).max(200) }),
     answer: ScanTarget,
     status: 200,
     errors: ['serial.invalid'],
