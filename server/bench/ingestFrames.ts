@@ -2,7 +2,7 @@ import type { BenchEvent, FrameBatch } from '../../src/shared/contract/frames.ts
 import { AppError } from '../errors.ts'
 import { channelsOf, noteLevels } from '../runs/openRun.ts'
 import type { OpenRun } from '../runs/openRun.ts'
-import { byFrame } from '../runs/replayRun.ts'
+import { applyStored, byFrame } from '../runs/replayRun.ts'
 
 const NO_EVENTS: readonly BenchEvent[] = []
 
@@ -56,5 +56,5 @@ function checkShape(run: OpenRun, batch: FrameBatch): void {
 /** Actions that were stored before a restart take the place that they had. */
 function applyWaiting(run: OpenRun): void {
   while (run.waiting[0] && run.waiting[0].frame <= run.next)
-    run.method.takeAction(run.state, run.waiting.shift()!)
+    applyStored(run.method, run.state, run.waiting.shift()!)
 }

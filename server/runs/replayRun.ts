@@ -1,6 +1,7 @@
 import type { BenchEvent, Frame } from '../../src/shared/contract/frames.ts'
 import type { RunAction, RunSetup } from '../../src/shared/contract/runs.ts'
 import { methods } from '../../src/shared/measure/method.ts'
+import type { MethodCode } from '../../src/shared/measure/method.ts'
 import type { RunState } from '../../src/shared/measure/runState.ts'
 
 const NO_EVENTS: readonly BenchEvent[] = []
@@ -23,13 +24,21 @@ export function replayRun(
   for (const stretch of trace) {
     const events = byFrame(stretch.events)
     for (const frame of stretch.frames) {
-      while (waiting[0] && waiting[0].frame <= frameNo) method.takeAction(state, waiting.shift()!)
+      while (waiting[0] && waiting[0].frame <= frameNo) applyStored(method, state, waiting.shift()!)
       method.takeFrame(state, frame, events.get(frameNo) ?? NO_EVENTS)
       frameNo++
     }
   }
-  while (waiting[0] && (atEnd || waiting[0].frame <= frameNo)) method.takeAction(state, waiting.shift()!)
+  while (waiting[0] && (atEnd || waiting[0].frame <= frameNo)) applyStored(method, state, waiting.shift()!)
   return { state, frames: frameNo, left: waiting }
+}
+
+/**
+ * A stored action takes its place again. After a break in which a bench lost frames it may not fit there any more:
+ * then it has no effect, now and whenever the run is computed again.
+ */
+export function applyStored(method: MethodCode, state: RunState, action: RunAction): void {
+  if (method.refusalOf(state, action.action) === null) method.takeAction(state, action)
 }
 
 export function byFrame(events: readonly BenchEvent[]): Map<number, BenchEvent[]> {
