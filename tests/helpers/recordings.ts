@@ -1,5 +1,3 @@
-import { mkdtempSync, rmSync } from 'node:fs'
-import { tmpdir } from 'node:os'
 import path from 'node:path'
 import type { BenchEvent, Frame, RunOrder } from '../../src/shared/contract/frames.ts'
 import { proofRecordings } from '../../simulator/recordings/proofRecordings.ts'
@@ -38,14 +36,4 @@ export function playAll(source: BenchSource, order: RunOrder = RECORDING_ORDER):
     played.frames.push(step.frame)
     played.events.push(...step.events)
   }
-}
-
-const made: string[] = []
-
-/** A folder that goes away with the test process. */
-export function temporaryFolder(): string {
-  const folder = mkdtempSync(path.join(tmpdir(), 'recordings-'))
-  if (made.push(folder) === 1)
-    process.once('exit', () => made.forEach((each) => rmSync(each, { recursive: true, force: true })))
-  return folder
 }

@@ -7,8 +7,9 @@ import { layRecording } from '../../../simulator/recordings/layRecording.ts'
 import { OPEN_STRINGS_HZ, soxPluck } from '../../../simulator/recordings/soxPlucks.ts'
 import { WavSource } from '../../../simulator/sources/wavSource.ts'
 import { writeWav } from '../../../simulator/signal/writeWav.ts'
-import { playAll, recordings, temporaryFolder } from '../../helpers/recordings.ts'
+import { playAll, recordings } from '../../helpers/recordings.ts'
 import type { Played } from '../../helpers/recordings.ts'
+import { temporaryFolder } from '../../helpers/temporaryFolder.ts'
 
 const proof = recordings()
 const played = (kind: keyof typeof proof.file) => playAll(new WavSource(proof.file[kind]))
@@ -19,7 +20,7 @@ const stringOf = ({ milliHz }: PitchEvent) =>
 /** Energy mean of the 20 frames from 50 to 250 ms after the frame in which the pluck begins, dB. */
 const pluckLevelDb = ({ frames }: Played, atS: number, channel: number) => {
   const onset = Math.floor(atS * 100)
-  return meanPowerDb(frames.slice(onset + 5, onset + 25).map((frame) => frame.levelMdb[channel]! / 1000))
+  return meanPowerDb(frames.slice(onset + 5, onset + 25).map((frame) => frame.levelMdb[channel]! / 1000))!
 }
 const sampleSd = (values: number[]) => {
   const mean = values.reduce((sum, x) => sum + x, 0) / values.length
@@ -32,7 +33,7 @@ describe('the recordings of the first proof', () => {
       const { frames } = played(kind)
       const channels = frames[0]!.levelMdb.length
       for (let channel = 0; channel < channels; channel++) {
-        const floorDb = meanPowerDb(frames.slice(10, 299).map((frame) => frame.levelMdb[channel]! / 1000))
+        const floorDb = meanPowerDb(frames.slice(10, 299).map((frame) => frame.levelMdb[channel]! / 1000))!
         expect(Math.abs(floorDb + 80)).toBeLessThan(0.1)
       }
     }

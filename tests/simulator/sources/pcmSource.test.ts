@@ -6,8 +6,9 @@ import { WavSource } from '../../../simulator/sources/wavSource.ts'
 import { writeWav } from '../../../simulator/signal/writeWav.ts'
 import type { SampleCoding } from '../../../simulator/signal/sampleFormat.ts'
 import type { SourceStep } from '../../../simulator/sources/source.ts'
-import { playAll, RECORDING_ORDER, temporaryFolder } from '../../helpers/recordings.ts'
+import { playAll, RECORDING_ORDER } from '../../helpers/recordings.ts'
 import { sine, stringTone, whiteNoise } from '../../helpers/signals.ts'
+import { temporaryFolder } from '../../helpers/temporaryFolder.ts'
 
 const RATE = 48_000
 const OPTIONS: PcmOptions = { rateHz: RATE, coding: 's24le', channels: 1, realTime: true }

@@ -3,8 +3,9 @@ import { describe, expect, it } from 'vitest'
 import { BenchEvent, BenchHello, Frame } from '../../../src/shared/contract/frames.ts'
 import { WavSource } from '../../../simulator/sources/wavSource.ts'
 import { writeWav } from '../../../simulator/signal/writeWav.ts'
-import { playAll, RECORDING_ORDER, temporaryFolder } from '../../helpers/recordings.ts'
+import { playAll, RECORDING_ORDER } from '../../helpers/recordings.ts'
 import { stringTone, sumOf, whiteNoise } from '../../helpers/signals.ts'
+import { temporaryFolder } from '../../helpers/temporaryFolder.ts'
 
 const RATE = 48_000
 
