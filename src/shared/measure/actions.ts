@@ -39,6 +39,7 @@ export function applyAction(state: RunState, { action, person }: RunAction): voi
       return sayNoSignal(state, tallyOf(state, action.stringNo))
     case 'repeatString':
       repeatString(tallyOf(state, action.stringNo), state.plan, action.reason)
+      state.levelChanges++
       return backToStrings(state)
     case 'enterValue':
       return enterValue(state, action, person)

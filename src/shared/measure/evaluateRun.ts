@@ -39,8 +39,8 @@ export interface EvaluatedRun {
   meanLevel: Evaluated
   range: Evaluated
   step: Evaluated
-  /** simulated uncertainty of range and step; null without six levels */
-  simulated: { range: SimulatedSpread; step: SimulatedSpread } | null
+  /** uncertainty of range and step, simulated when first asked for; null without six levels */
+  simulated: () => { range: SimulatedSpread; step: SimulatedSpread } | null
   /** range and step are at least this, when a string is censored; null: not known */
   leastRangeDb: number | null
   leastStepDb: number | null
@@ -54,8 +54,21 @@ export function patternInForce(sheet: RunState['setup']['sheet']): number[] | nu
   return patternDb !== null && patternInstruments >= PATTERN_LEAST_INSTRUMENTS ? patternDb : null
 }
 
-/** Works out every level, balance, range, step and mean level from the plucks that are accepted so far. */
+const latest = new WeakMap<RunState, { levelChanges: number; evaluated: EvaluatedRun }>()
+
+/**
+ * Every level, balance, range, step and mean level from the plucks that are accepted so far. Kept until the levels
+ * change: the simulation takes milliseconds and a screen asks often.
+ */
 export function evaluateRun(state: RunState): EvaluatedRun {
+  const known = latest.get(state)
+  if (known?.levelChanges === state.levelChanges) return known.evaluated
+  const evaluated = workOut(state)
+  latest.set(state, { levelChanges: state.levelChanges, evaluated })
+  return evaluated
+}
+
+function workOut(state: RunState): EvaluatedRun {
   const { setup } = state
   const pattern = patternInForce(setup.sheet)
   const uPattern = pattern === null ? 0 : setup.sheet.patternUDb
@@ -207,10 +220,11 @@ function evaluateRangeAndStep(
   const n = Math.min(...strings.map(({ level }) => level.n))
   const evaluated = (value: number | null): Evaluated => ({ ...NOTHING, value, n: value === null ? 0 : n })
   const independent = strings.map((string) => string.independent)
+  let simulated: ReturnType<EvaluatedRun['simulated']> | undefined
   return {
     range: evaluated(rangeDb(exact)),
     step: evaluated(stepDb(exact)),
-    simulated: rangeStepUncertainty(exact, independent, uPattern),
+    simulated: () => (simulated ??= rangeStepUncertainty(exact, independent, uPattern)),
     ...leastOf(deviations, censored),
   }
 }

@@ -2,6 +2,7 @@ import type { RuleResult } from '../contract/measured.ts'
 import type { SheetRule } from '../contract/thresholds.ts'
 import { conformProbability } from './conformProbability.ts'
 import { expandedUncertainty } from './expandedUncertainty.ts'
+import type { SimulatedSpread } from './rangeStepUncertainty.ts'
 import { unitOf } from './unitOf.ts'
 import { combinedU, welchSatterthwaite, type UncertaintyPart } from './welchSatterthwaite.ts'
 
@@ -23,8 +24,8 @@ export interface RuleFact {
   outside: 'noSignal' | null
   /** the value is not known, but it is at least this */
   atLeast: number | null
-  /** of a simulation, in place of `parts` */
-  simulated: { expandedOneSided: number; shareUpTo: (limit: number) => number } | null
+  /** in place of `parts`: of a simulation, run when asked for */
+  simulated: (() => Pick<SimulatedSpread, 'expandedOneSided' | 'shareUpTo'> | null) | null
 }
 
 export interface JudgeOptions {
@@ -49,28 +50,38 @@ export const NO_FACT: RuleFact = {
   simulated: null,
 }
 
+/** A rule's outcome without its numbers: all that a verdict needs. */
+export type Decision = Pick<RuleResult, 'rule' | 'stringNo' | 'result' | 'onOutside' | 'required' | 'why'>
+
 /**
- * Judges one rule. Written as 'inside', never as 'not outside': within is only a finite value inside its limits, or a
- * censored one wholly inside. A value between guarded and specified limit is outside, 'in the guard band'. margin is
- * the distance to the nearer specified limit in the rule's unit, negative outside; expandedU is one-sided for one
- * limit, two-sided for two.
+ * Decides one rule. Written as 'inside', never as 'not outside': within is only a finite value inside its limits, or a
+ * censored one wholly inside. A value between guarded and specified limit is outside, 'in the guard band'. Without a
+ * pattern in force a balance rule only advises and nothing requires it.
  */
-export function judgeRule(rule: SheetRule, fact: RuleFact, options: JudgeOptions): RuleResult {
-  const low = finiteOrNull(rule.low)
-  const high = finiteOrNull(rule.high)
-  const value = finiteOrNull(fact.value)
-  const { result, why } = judge(fact, value, low, high, rule, options)
-  const u = fact.parts.length === 0 ? null : finiteOrNull(combinedU(fact.parts))
-  const dof = welchSatterthwaite(fact.parts)
-  const single = (low === null) !== (high === null)
-  const limited = low !== null || high !== null
-  const shown = value !== null && !fact.atMost && limited
+export function decideRule(rule: SheetRule, fact: RuleFact, options: JudgeOptions): Decision {
+  const { result, why } = decide(fact, rule, options.guard)
   return {
     rule: rule.rule,
     stringNo: options.stringNo,
     result,
     onOutside: options.patternMissing ? 'advise' : rule.onOutside,
     required: rule.required && !options.patternMissing,
+    why: options.patternMissing && result === 'outside' ? 'patternNotSet' : why,
+  }
+}
+
+/**
+ * Judges one rule: its decision and the numbers behind it. margin is the distance to the nearer specified limit in the
+ * rule's unit, negative outside; expandedU is one-sided for one limit, two-sided for two; pConform is the probability
+ * that the true value lies inside (JCGM 106). What is not finite is null.
+ */
+export function judgeRule(rule: SheetRule, fact: RuleFact, options: JudgeOptions): RuleResult {
+  const low = finiteOrNull(rule.low)
+  const high = finiteOrNull(rule.high)
+  const value = finiteOrNull(fact.value)
+  const known = value !== null && !fact.atMost && (low !== null || high !== null)
+  return {
+    ...decideRule(rule, fact, options),
     unit: unitOf(rule.rule),
     value,
     atMost: value !== null && fact.atMost,
@@ -78,27 +89,39 @@ export function judgeRule(rule: SheetRule, fact: RuleFact, options: JudgeOptions
     low,
     high,
     margin: marginOf(value, fact.atMost, low, high),
-    expandedU: shown
-      ? (finiteOrNull(fact.simulated?.expandedOneSided) ?? expandedUncertainty(u, dof, single ? 1 : 2))
-      : null,
-    pConform: shown
-      ? fact.simulated !== null && high !== null && low === null
-        ? clamp(fact.simulated.shareUpTo(high))
-        : conformProbability(value, u, dof, low, high)
-      : null,
-    why: options.patternMissing && result === 'outside' ? 'patternNotSet' : why,
+    ...(known ? confidenceOf(fact, value, low, high) : { expandedU: null, pConform: null }),
     byHand: fact.byHand,
   }
 }
 
-function judge(
+function confidenceOf(
   fact: RuleFact,
-  value: number | null,
+  value: number,
   low: number | null,
   high: number | null,
+): Pick<RuleResult, 'expandedU' | 'pConform'> {
+  if (fact.simulated !== null && low === null && high !== null) {
+    const spread = fact.simulated()
+    if (spread === null) return { expandedU: null, pConform: null }
+    return { expandedU: finiteOrNull(spread.expandedOneSided), pConform: spread.shareUpTo(high) }
+  }
+  const u = fact.parts.length === 0 ? null : finiteOrNull(combinedU(fact.parts))
+  const dof = welchSatterthwaite(fact.parts)
+  const sides = low !== null && high !== null ? 2 : 1
+  return {
+    expandedU: expandedUncertainty(u, dof, sides),
+    pConform: conformProbability(value, u, dof, low, high),
+  }
+}
+
+function decide(
+  fact: RuleFact,
   rule: SheetRule,
-  options: JudgeOptions,
+  guard: number,
 ): { result: RuleResult['result']; why: Why | null } {
+  const low = finiteOrNull(rule.low)
+  const high = finiteOrNull(rule.high)
+  const value = finiteOrNull(fact.value)
   if (fact.notTested !== null) return { result: 'notTested', why: fact.notTested }
   if (fact.outside !== null) return { result: 'outside', why: fact.outside }
   if (fact.invalid !== null) return { result: 'invalid', why: fact.invalid }
@@ -111,7 +134,7 @@ function judge(
   if (low === null && high === null) return { result: 'invalid', why: 'notFinite' }
   if (fact.atMost) return judgeCensored(value, low, high)
   if (!isInside(value, low, high, 0)) return { result: 'outside', why: 'beyondLimit' }
-  if (!isInside(value, low, high, options.guard)) return { result: 'outside', why: 'inGuardBand' }
+  if (!isInside(value, low, high, guard)) return { result: 'outside', why: 'inGuardBand' }
   return { result: 'within', why: null }
 }
 
@@ -166,8 +189,4 @@ function marginOf(
 
 function finiteOrNull(value: number | null | undefined): number | null {
   return value !== null && value !== undefined && Number.isFinite(value) ? value : null
-}
-
-function clamp(probability: number): number {
-  return Math.min(1, Math.max(0, probability))
 }

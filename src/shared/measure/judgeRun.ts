@@ -2,7 +2,7 @@ import type { RuleResult } from '../contract/measured.ts'
 import type { RuleId } from '../contract/rules.ts'
 import type { SheetRule } from '../contract/thresholds.ts'
 import { patternInForce, type EvaluatedRun } from './evaluateRun.ts'
-import { judgeRule } from './judgeRule.ts'
+import { decideRule, judgeRule, type Decision, type JudgeOptions, type RuleFact } from './judgeRule.ts'
 import { readNoise, type NoiseReadings } from './noiseReadings.ts'
 import { ruleFact, stringsOfRule } from './ruleFacts.ts'
 import { isPerElement } from './runPlan.ts'
@@ -16,25 +16,30 @@ export function judgeRun(
   evaluated: EvaluatedRun,
   noise: NoiseReadings = readNoise(state, evaluated),
 ): RuleResult[] {
-  return state.setup.sheet.rules.flatMap((rule) =>
-    stringsOfRule(isPerElement(rule.rule)).map((stringNo) =>
-      judgeOne(state, evaluated, noise, rule, stringNo),
-    ),
-  )
+  return eachRule(state, evaluated, noise, judgeRule)
 }
 
-function judgeOne(
+/** The same without the numbers, at a fraction of the cost. */
+export function decideRun(state: RunState, evaluated: EvaluatedRun): Decision[] {
+  return eachRule(state, evaluated, readNoise(state, evaluated), decideRule)
+}
+
+function eachRule<T>(
   state: RunState,
   evaluated: EvaluatedRun,
   noise: NoiseReadings,
-  rule: SheetRule,
-  stringNo: number | null,
-): RuleResult {
-  return judgeRule(rule, ruleFact(state, evaluated, noise, rule.rule, stringNo), {
-    stringNo,
-    guard: guardOf(state, rule.rule),
-    patternMissing: PATTERN_RULES.includes(rule.rule) && patternInForce(state.setup.sheet) === null,
-  })
+  judge: (rule: SheetRule, fact: RuleFact, options: JudgeOptions) => T,
+): T[] {
+  const withoutPattern = patternInForce(state.setup.sheet) === null
+  return state.setup.sheet.rules.flatMap((rule) =>
+    stringsOfRule(isPerElement(rule.rule)).map((stringNo) =>
+      judge(rule, ruleFact(state, evaluated, noise, rule.rule, stringNo), {
+        stringNo,
+        guard: guardOf(state, rule.rule),
+        patternMissing: withoutPattern && PATTERN_RULES.includes(rule.rule),
+      }),
+    ),
+  )
 }
 
 /** Width of the guard band, dB: the sheet's budget for balances and for levels; no other rule has one. */
@@ -52,7 +57,7 @@ function guardOf(state: RunState, rule: RuleId): number {
 export function stringsInGuardBand(state: RunState, evaluated: EvaluatedRun): number[] {
   if (!state.setup.sheet.guard.on) return []
   const strings = new Set<number>()
-  for (const result of judgeRun(state, evaluated)) {
+  for (const result of decideRun(state, evaluated)) {
     if (result.why !== 'inGuardBand' || result.onOutside !== 'reject') continue
     if (result.stringNo !== null) strings.add(result.stringNo)
     else evaluated.reference.members.forEach((member, i) => member && strings.add(i + 1))

@@ -28,7 +28,7 @@ import {
   takeUnpluggedFrame,
   takeWiggleFrame,
 } from './jackWatch.ts'
-import { judgeRun, stringsInGuardBand } from './judgeRun.ts'
+import { decideRun, stringsInGuardBand } from './judgeRun.ts'
 import { forgetLevels, meanPowerIn, pushFrame } from './levelRing.ts'
 import { dbOfPower } from './meanPowerDb.ts'
 import { isQuiet, latestSums, restartNoiseStretch, takeNoiseFrame } from './noiseStretch.ts'
@@ -99,7 +99,7 @@ function enterPhase(state: RunState, phase: RunPhase): void {
 }
 
 function judgeVerdict(state: RunState): 'pass' | 'fail' | 'none' {
-  const results = judgeRun(state, evaluateRun(state))
+  const results = decideRun(state, evaluateRun(state))
   return verdictOf(results, { verified: state.setup.verified, stopped: false })
 }
 
@@ -300,10 +300,12 @@ function foldWiggle(state: RunState, frame: Frame): void {
 
 /** All strings have what they need: asks for more where the guard band says so, else goes on. */
 function finishStrings(state: RunState): void {
-  const inBand = stringsInGuardBand(state, evaluateRun(state))
   let more = false
-  for (const stringNo of inBand) {
-    if (askForOneMore(state.strings[stringNo - 1]!, state.plan)) more = true
+  if (state.setup.sheet.guard.on) {
+    for (const stringNo of stringsInGuardBand(state, evaluateRun(state))) {
+      if (askForOneMore(state.strings[stringNo - 1]!, state.plan)) more = true
+    }
+    if (more) state.levelChanges++
   }
   state.changes++
   if (!more) advance(state)

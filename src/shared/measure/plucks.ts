@@ -168,6 +168,7 @@ function firstReason(reasons: [DropReason, boolean][]): DropReason | null {
 
 function countTry(state: RunState, tally: StringTally, pluck: MeasuredPluck): void {
   tally.tries++
+  state.levelChanges++
   if (pluck.dropped === null) tally.accepted.push(pluck)
   if (pluck.dropped === 'belowFloor') tally.noSignalCount++
   refreshString(tally, state.plan, state.setup.sheet)

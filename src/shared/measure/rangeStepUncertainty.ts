@@ -35,18 +35,34 @@ export function rangeStepUncertainty(
   const ranges = new Float64Array(SIMULATION_DRAWS)
   const steps = new Float64Array(SIMULATION_DRAWS)
   const dof = parts[0]!.scatter.dof
-  const drawn: number[] = balancesDb.map(() => 0)
+  const drawn = new Float64Array(parts.length)
+  const scatterSquares = parts.map((part) => part!.scatter.u ** 2)
+  const otherSquares = parts.map((part) => part!.own.u ** 2 + uPatternDb ** 2)
   for (let i = 0; i < SIMULATION_DRAWS; i++) {
-    const stretch = dof === null ? 1 : Math.sqrt(dof / chiSquareFrom(normal, random, dof))
+    // given the drawn variance, scatter and the other parts are normal and one draw serves both
+    const stretch = dof === null ? 1 : dof / chiSquareFrom(normal, random, dof)
     for (let e = 0; e < drawn.length; e++) {
-      const part = parts[e]!
-      drawn[e] =
-        balancesDb[e]! + part.scatter.u * stretch * normal() + Math.hypot(part.own.u, uPatternDb) * normal()
+      drawn[e] = balancesDb[e]! + Math.sqrt(scatterSquares[e]! * stretch + otherSquares[e]!) * normal()
     }
-    ranges[i] = rangeDb(drawn)!
-    steps[i] = stepDb(drawn)!
+    spreadInto(drawn, i, ranges, steps)
   }
   return { range: spreadOf(range, ranges), step: spreadOf(step, steps) }
+}
+
+/** Range and step of one draw, as rangeDb and stepDb define them for values that are all there. */
+function spreadInto(drawn: Float64Array, i: number, ranges: Float64Array, steps: Float64Array): void {
+  let high = drawn[0]!
+  let low = high
+  let step = 0
+  for (let e = 1; e < drawn.length; e++) {
+    const value = drawn[e]!
+    if (value > high) high = value
+    else if (value < low) low = value
+    const difference = Math.abs(value - drawn[e - 1]!)
+    if (difference > step) step = difference
+  }
+  ranges[i] = high - low
+  steps[i] = step
 }
 
 function spreadOf(value: number, draws: Float64Array): SimulatedSpread {

@@ -6,7 +6,7 @@ import type { Evaluated, EvaluatedRun, EvaluatedString } from './evaluateRun.ts'
 import { NO_FACT, type RuleFact } from './judgeRule.ts'
 import { allNo, allYes, meanOfAverage } from './jackWatch.ts'
 import type { NoiseReadings } from './noiseReadings.ts'
-import type { RunState } from './state.ts'
+import { isFinished, type RunState } from './state.ts'
 
 const NOT_REACHED: RuleFact = { ...NO_FACT, notTested: 'notReached' }
 const NOT_MEASURABLE: RuleFact = { ...NO_FACT, notTested: 'notMeasurable' }
@@ -77,12 +77,13 @@ function unsoundness(state: RunState, string: EvaluatedString): 'tooFewPlucks' |
   return sDb !== null && sDb <= state.setup.sheet.plucks.largestSDb ? null : 'scatterTooLarge'
 }
 
-function isReached({ tally }: EvaluatedString): boolean {
-  return tally.accepted.length > 0 || tally.state === 'silent' || tally.state === 'triesUsed'
+/** The string is finished, or the run is and left it with some plucks. */
+function isReached(state: RunState, { tally }: EvaluatedString): boolean {
+  return tally.state !== 'todo' || (isFinished(state) && tally.accepted.length > 0)
 }
 
 function stringFact(state: RunState, string: EvaluatedString, reading: Evaluated): RuleFact {
-  if (!isReached(string)) return NOT_REACHED
+  if (!isReached(state, string)) return { ...NOT_REACHED, ...reading }
   return { ...NO_FACT, ...reading, invalid: unsoundness(state, string) }
 }
 
@@ -105,7 +106,7 @@ function allStringsFact(
   state: RunState,
   strings: readonly EvaluatedString[],
 ): { notTested: 'notReached' | null; invalid: 'tooFewPlucks' | 'scatterTooLarge' | null } {
-  const notTested = strings.every(isReached) ? null : ('notReached' as const)
+  const notTested = strings.every((string) => isReached(state, string)) ? null : ('notReached' as const)
   const invalid = strings.map((string) => unsoundness(state, string)).find((why) => why !== null) ?? null
   return { notTested, invalid }
 }
@@ -113,7 +114,6 @@ function allStringsFact(
 function spreadFact(state: RunState, evaluated: EvaluatedRun, which: 'range' | 'step'): RuleFact {
   const reading = evaluated[which]
   const sound = allStringsFact(state, evaluated.strings)
-  const simulated = evaluated.simulated?.[which] ?? null
   const atLeast = which === 'range' ? evaluated.leastRangeDb : evaluated.leastStepDb
   const allSilent = evaluated.strings.every(({ level }) => level.atMost)
   return {
@@ -121,8 +121,7 @@ function spreadFact(state: RunState, evaluated: EvaluatedRun, which: 'range' | '
     ...reading,
     ...sound,
     invalid: sound.invalid ?? (allSilent ? 'noReference' : null),
-    parts: simulated === null ? [] : [{ u: simulated.u, dof: null }],
-    simulated,
+    simulated: () => evaluated.simulated()?.[which] ?? null,
     atLeast: reading.value === null ? atLeast : null,
   }
 }

@@ -58,6 +58,8 @@ export interface RunState {
   person: string
   entered: MeasuredRun['entered']
   verdict: Verdict | null
+  /** increases whenever a string's plucks, its state or a floor changed: what levels are worked out from */
+  levelChanges: number
 }
 
 export function createState(setup: RunSetup): RunState {
@@ -89,6 +91,7 @@ export function createState(setup: RunSetup): RunState {
     person: setup.person,
     entered: [],
     verdict: null,
+    levelChanges: 0,
   }
 }
 
@@ -114,6 +117,7 @@ export function askedString(state: RunState): StringTally | null {
 export function keepNoise(state: RunState, sums: NoiseSums): void {
   const { plan } = state
   state.noise = sums
+  state.levelChanges++
   for (let channel = 0; channel < plan.channels; channel++) {
     const noise = noiseAt(sums, { channel }, 'flat')
     const rawMdb = noise === null ? NaN : dbOfPower(noise.power) * 1000
