@@ -48,35 +48,35 @@ function userOf(row: RawUser): UserRow {
 }
 
 export async function findUserByEmail(knex: Knex, email: string): Promise<UserRow | null> {
-  const row = (await knex('users').where({ email }).first(USER_COLUMNS)) as RawUser | undefined
+  const row = await knex('users').where({ email }).first<RawUser | undefined>(USER_COLUMNS)
   return row ? userOf(row) : null
 }
 
 export async function findUser(knex: Knex, id: string): Promise<UserRow | null> {
-  const row = (await knex('users').where({ id }).first(USER_COLUMNS)) as RawUser | undefined
+  const row = await knex('users').where({ id }).first<RawUser | undefined>(USER_COLUMNS)
   return row ? userOf(row) : null
 }
 
 /** An active person with roles and what they allow; null when there is none. */
 export async function findPerson(knex: Knex, userId: string): Promise<Person | null> {
-  const rows = (await knex('users')
+  const rows = await knex('users')
     .leftJoin('user_roles', 'user_roles.user_id', 'users.id')
     .where('users.id', userId)
     .whereNull('users.deactivated_at')
-    .select('users.id', 'users.name', 'users.email', 'user_roles.role')) as PersonPart[]
+    .select<PersonPart[]>('users.id', 'users.name', 'users.email', 'user_roles.role')
   return personOfRows(rows)
 }
 
 /** The person behind a session that is open at `now`, in one query; null when it has ended. */
 export async function findPersonOfSession(knex: Knex, sessionId: string, now: Date): Promise<Person | null> {
-  const rows = (await knex('sessions')
+  const rows = await knex('sessions')
     .join('users', 'users.id', 'sessions.user_id')
     .leftJoin('user_roles', 'user_roles.user_id', 'users.id')
     .where('sessions.id', sessionId)
     .whereNull('sessions.ended_at')
     .where('sessions.expires_at', '>', now)
     .whereNull('users.deactivated_at')
-    .select('users.id', 'users.name', 'users.email', 'user_roles.role')) as PersonPart[]
+    .select<PersonPart[]>('users.id', 'users.name', 'users.email', 'user_roles.role')
   return personOfRows(rows)
 }
 
@@ -156,9 +156,11 @@ export async function endSessions(
   at: Date,
 ): Promise<string[]> {
   const where = 'sessionId' in which ? { id: which.sessionId } : { user_id: which.userId }
-  const open = (await trx('sessions').where(where).whereNull('ended_at').forUpdate().select('id')) as {
-    id: string
-  }[]
+  const open = await trx('sessions')
+    .where(where)
+    .whereNull('ended_at')
+    .forUpdate()
+    .select<{ id: string }[]>('id')
   const ids = open.map(({ id }) => id)
   if (ids.length > 0) await trx('sessions').whereIn('id', ids).update({ ended_at: at, end_reason: reason })
   return ids

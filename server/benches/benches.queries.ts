@@ -89,7 +89,8 @@ export async function findBenchByCode(
   knex: Knex,
   code: string,
 ): Promise<{ id: string; name: string } | null> {
-  const row = (await knex('benches').where({ code, retired_at: null }).first('id', 'name')) as
-    { id: string; name: string } | undefined
+  const row = await knex('benches')
+    .where({ code, retired_at: null })
+    .first<{ id: string; name: string } | undefined>('id', 'name')
   return row ?? null
 }

@@ -1,9 +1,9 @@
 import type { Knex } from 'knex'
 
 export async function findAcknowledgedAt(knex: Knex, userId: string, shiftKey: string): Promise<Date | null> {
-  const row = (await knex('caution_acknowledgements')
+  const row = await knex('caution_acknowledgements')
     .where({ user_id: userId, shift_key: shiftKey })
-    .first('at')) as { at: Date } | undefined
+    .first<{ at: Date } | undefined>('at')
   return row?.at ?? null
 }
 

@@ -63,14 +63,12 @@ export async function listInstruments(
   // Folding leaves letters and digits only, so the pattern needs no escaping.
   if (filter.search) void query.where('instruments.serial_folded', 'like', `%${foldedSerial(filter.search)}%`)
   const { after } = filter
-  if (after)
-    void query.where((place) =>
-      place
-        .where('instruments.created_at', '<', after.createdAt)
-        .orWhere((same) =>
-          same.where('instruments.created_at', after.createdAt).where('instruments.id', '<', after.id),
-        ),
-    )
+  if (after) {
+    void query
+      // Follows from the next line; alone the database can use it to begin in the middle of the index.
+      .where('instruments.created_at', '<=', after.createdAt)
+      .whereRaw('(instruments.created_at < ? or instruments.id < ?)', [after.createdAt, after.id])
+  }
   return ((await query) as RawInstrument[]).map(summaryOf)
 }
 
@@ -78,10 +76,11 @@ export async function findInstrument(
   knex: Knex,
   serial: string,
 ): Promise<{ instrument: InstrumentSummary; model: Model } | null> {
-  const row = (await instruments(knex).where('instruments.serial', serial).first(COLUMNS)) as
-    RawInstrument | undefined
+  const row = await instruments(knex)
+    .where('instruments.serial', serial)
+    .first<RawInstrument | undefined>(COLUMNS)
   if (!row) return null
-  const model = (await knex('models').where({ id: row.model_id }).first()) as RawModel
+  const model = await knex('models').where({ id: row.model_id }).first<RawModel>('*')
   return { instrument: summaryOf(row), model: modelOf(model) }
 }
 
@@ -90,10 +89,10 @@ export async function findInstrumentsByCode(
   knex: Knex,
   code: string,
 ): Promise<{ serial: string; modelName: string }[]> {
-  const rows = (await instruments(knex)
+  const rows = await instruments(knex)
     .where('instruments.serial_folded', foldedSerial(code))
     .limit(2)
     .orderByRaw('instruments.serial = ? desc', [code])
-    .select('instruments.serial', 'models.name as modelName')) as { serial: string; modelName: string }[]
+    .select<{ serial: string; modelName: string }[]>('instruments.serial', 'models.name as modelName')
   return rows[0]?.serial === code ? rows.slice(0, 1) : rows
 }

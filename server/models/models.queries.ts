@@ -41,13 +41,13 @@ interface RawRevision {
 
 /** All models by name, each with the revision that is in force at `now`. */
 export async function listModels(knex: Knex, now: Date): Promise<ModelView[]> {
-  const models = (await knex('models').orderBy('name').select('*')) as RawModel[]
-  const revisions = (await knex('threshold_revisions')
+  const models = await knex('models').orderBy('name').select<RawModel[]>('*')
+  const revisions = await knex('threshold_revisions')
     .where('status', 'inForce')
     .where('in_force_from', '<=', now)
     .orderBy('in_force_from')
     .orderBy('revision')
-    .select('model_id', 'id', 'label', 'revision', 'status', 'in_force_from')) as RawRevision[]
+    .select<RawRevision[]>('model_id', 'id', 'label', 'revision', 'status', 'in_force_from')
   // The last of a model in this order is the one in force.
   const inForce = new Map(revisions.map((row) => [row.model_id, sheetOf(row)]))
   return models.map((row) => ({ ...modelOf(row), sheetInForce: inForce.get(row.id) ?? null }))

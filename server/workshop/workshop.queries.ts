@@ -23,8 +23,10 @@ export const DEFAULT_SHIFTS: readonly Shift[] = [
 ]
 
 export async function findWorkshopClock(knex: Knex, fallbackTimeZone: string): Promise<WorkshopClock> {
-  const row = (await knex('workshop_settings').first('time_zone', 'shifts')) as
-    { time_zone: string; shifts: unknown } | undefined
+  const row = await knex('workshop_settings').first<{ time_zone: string; shifts: unknown } | undefined>(
+    'time_zone',
+    'shifts',
+  )
   if (!row) return { timeZone: fallbackTimeZone, shifts: [...DEFAULT_SHIFTS] }
   return { timeZone: row.time_zone, shifts: z.array(Shift).parse(fromJson(row.shifts)) }
 }

@@ -92,7 +92,7 @@ describe.each(routes)('%s', (key, route) => {
 
 describe('routes that the test above leaves to others', () => {
   it('is sign-in alone, which is public', () => {
-    expect(keys.filter((key) => !watched.includes(key))).toEqual(['auth.signIn'])
+    expect(keys.filter((key) => !(watched as RouteKey[]).includes(key))).toEqual(['auth.signIn'])
     expect(ROUTES['auth.signIn'].access).toBe('public')
   })
 
