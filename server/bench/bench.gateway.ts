@@ -5,6 +5,7 @@ import type { Namespace } from 'socket.io'
 import { BenchHello, BenchVerify, FrameBatch, PROTOCOL_VERSION } from '../../src/shared/contract/frames.ts'
 import type { BenchToServer, ServerToBench } from '../../src/shared/contract/frames.ts'
 import { AppError, problemOf } from '../errors.ts'
+import { measuredOf } from '../runs/openRun.ts'
 import type { RunBoard } from '../runs/runBoard.ts'
 import { answering } from './answering.ts'
 import { orderOf, WINDOW_FRAMES } from './benchHub.ts'
@@ -66,7 +67,7 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
       greeted = true
       const run = board.onBench(benchId)
       board.benchChanged(benchId)
-      if (run) queueMicrotask(() => hub.prompt(run, run.method.viewRun(run.state)))
+      if (run) queueMicrotask(() => hub.prompt(run, measuredOf(run)))
       return {
         benchId,
         name: bench.name,

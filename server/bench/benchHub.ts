@@ -9,6 +9,7 @@ import type {
 } from '../../src/shared/contract/frames.ts'
 import type { SimulationCommand } from '../../src/shared/contract/simulation.ts'
 import { AppError, problemOf } from '../errors.ts'
+import { measuredOf } from '../runs/openRun.ts'
 import type { OpenRun } from '../runs/openRun.ts'
 import type { MeasuredRun } from '../../src/shared/contract/measured.ts'
 
@@ -63,7 +64,7 @@ export class BenchHub {
 
   startRun(run: OpenRun): void {
     this.connections.get(run.row.benchId)?.socket.emit('run:start', orderOf(run))
-    this.prompt(run, run.method.viewRun(run.state))
+    this.prompt(run, measuredOf(run))
   }
 
   prompt(run: OpenRun, measured: MeasuredRun): void {

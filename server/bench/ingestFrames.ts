@@ -1,4 +1,4 @@
-import type { BenchEvent, FrameBatch } from '../../src/shared/contract/frames.ts'
+import type { BenchEvent, Frame, FrameBatch } from '../../src/shared/contract/frames.ts'
 import { AppError } from '../errors.ts'
 import { channelsOf, noteLevels } from '../runs/openRun.ts'
 import type { OpenRun } from '../runs/openRun.ts'
@@ -31,7 +31,7 @@ export function ingestFrames(run: OpenRun, batch: FrameBatch): number {
     if (run.method.isFinished(run.state)) break
     const frame = batch.frames[frameNo - batch.from]!
     const with_ = events.get(frameNo) ?? NO_EVENTS
-    run.method.takeFrame(run.state, frame, with_)
+    measure(run, frame, with_)
     run.buffer.append(frame, with_)
     noteLevels(run, frame, frameNo)
     run.next = frameNo + 1
@@ -40,6 +40,16 @@ export function ingestFrames(run: OpenRun, batch: FrameBatch): number {
   }
   applyWaiting(run)
   return taken
+}
+
+/** The trace comes first: a fault in measuring loses no frame, so that the run can be computed again. */
+function measure(run: OpenRun, frame: Frame, events: readonly BenchEvent[]): void {
+  if (run.fault) return
+  try {
+    run.method.takeFrame(run.state, frame, events)
+  } catch (error) {
+    run.fault = error instanceof Error ? error : new Error(String(error))
+  }
 }
 
 function checkShape(run: OpenRun, batch: FrameBatch): void {

@@ -1,6 +1,7 @@
 import { SILENCE_MDB, NOT_MEASURED_MDB } from '../../src/shared/contract/quantities.ts'
 import type { Frame } from '../../src/shared/contract/frames.ts'
 import type { LiveLevels } from '../../src/shared/contract/live.ts'
+import type { MeasuredRun } from '../../src/shared/contract/measured.ts'
 import type { RunAction, RunView } from '../../src/shared/contract/runs.ts'
 import { methods } from '../../src/shared/measure/method.ts'
 import type { MethodCode } from '../../src/shared/measure/method.ts'
@@ -33,6 +34,10 @@ export interface OpenRun {
   /** commits of its trace, then its end, one after the other */
   storing: SerialQueue
   lastHeardMs: number
+  /** the view that was worked out last */
+  measured: MeasuredRun
+  /** measuring threw: frames are kept all the same, the run ends without a verdict */
+  fault: Error | null
   levels: Levels
 }
 
@@ -51,10 +56,13 @@ export function openRunOf(row: RunRow, nowMs: number): OpenRun {
   const method = methods[row.setup.method]
   if (!method) throw new Error(`method ${row.setup.method} is not part of this program`)
   const channels = channelsOf(row)
+  const state = method.startRun(row.setup)
   return {
     row,
     method,
-    state: method.startRun(row.setup),
+    state,
+    measured: method.viewRun(state),
+    fault: null,
     next: 0,
     buffer: new TraceBuffer(channels),
     committed: 0,
@@ -70,6 +78,17 @@ export function openRunOf(row: RunRow, nowMs: number): OpenRun {
     lastHeardMs: nowMs,
     levels: { frame: -1, levelMdb: emptyLevels(channels), jackMdb: NOT_MEASURED_MDB, last: null },
   }
+}
+
+/** Everything measured so far; should working it out fail, the view before it, and the run is marked as faulty. */
+export function measuredOf(run: OpenRun): MeasuredRun {
+  if (run.fault) return run.measured
+  try {
+    run.measured = run.method.viewRun(run.state)
+  } catch (error) {
+    run.fault = error instanceof Error ? error : new Error(String(error))
+  }
+  return run.measured
 }
 
 /** Keeps the loudest frame of each channel until the next live update takes it. */

@@ -11,7 +11,7 @@ import { ingestFrames } from '../bench/ingestFrames.ts'
 import { sealRun } from '../bench/sealRun.ts'
 import { isDuplicate, isStorageAway } from '../connect.ts'
 import { AppError } from '../errors.ts'
-import { openRunOf } from './openRun.ts'
+import { measuredOf, openRunOf } from './openRun.ts'
 import type { OpenRun } from './openRun.ts'
 import { replayRun } from './replayRun.ts'
 import {
@@ -119,7 +119,7 @@ export class RunBoard {
   /** Something a person does: stored with its frame before it is answered. A repeat of the same id changes nothing. */
   act(run: OpenRun, id: string, body: RunActionBody, actor: Actor): Promise<MeasuredRun> {
     return run.queue.add(async () => {
-      if (run.actions.some((action) => action.id === id)) return run.method.viewRun(run.state)
+      if (run.actions.some((action) => action.id === id)) return measuredOf(run)
       if (run.ending) throw new AppError('run.not-open')
       const own = actor.id === run.row.openedBy.id
       if (!own && !(body.kind === 'stop' && actor.mayStopAny))
@@ -135,7 +135,7 @@ export class RunBoard {
   /** Another person goes on with the run. */
   takeOver(run: OpenRun, id: string, reason: string, actor: Actor): Promise<MeasuredRun> {
     return run.queue.add(async () => {
-      if (run.actions.some((action) => action.id === id)) return run.method.viewRun(run.state)
+      if (run.actions.some((action) => action.id === id)) return measuredOf(run)
       if (run.ending) throw new AppError('run.not-open')
       if (actor.id !== run.row.openedBy.id && !actor.mayStopAny)
         throw new AppError('run.not-yours', { facts: { person: run.row.openedBy.name } })
@@ -166,7 +166,7 @@ export class RunBoard {
   /** The bench came or went: whoever looks at its run is told. */
   benchChanged(benchId: string): void {
     const run = this.byBench.get(benchId)
-    if (run) this.events.emit('changed', run, run.method.viewRun(run.state))
+    if (run) this.events.emit('changed', run, measuredOf(run))
   }
 
   /** Waits for what is being stored; open runs stay open in the database and are restored at the next start. */
@@ -221,7 +221,7 @@ export class RunBoard {
     run.actions.push(action)
     if (run.waiting.length > 0 || action.frame > run.next) run.waiting.push(action)
     else run.method.takeAction(run.state, action)
-    const measured = run.method.viewRun(run.state)
+    const measured = measuredOf(run)
     this.events.emit('changed', run, measured)
     if (action.action.kind === 'stop') this.end(run, 'stopped', action.action.reason)
     else this.endWhenFinished(run)
@@ -239,7 +239,7 @@ export class RunBoard {
     const change = run.method.changeCount(run.state)
     if (change !== shown.change) {
       shown.change = change
-      this.events.emit('changed', run, run.method.viewRun(run.state))
+      this.events.emit('changed', run, measuredOf(run))
     }
   }
 
@@ -266,14 +266,18 @@ export class RunBoard {
   }
 
   private endWhenFinished(run: OpenRun): void {
-    if (!run.ending && run.method.isFinished(run.state)) this.end(run, 'sealed', null)
+    if (run.ending) return
+    if (run.fault) {
+      this.deps.log.error({ err: run.fault, run: run.row.id }, 'measuring failed, the trace is kept')
+      this.end(run, 'interrupted', 'measuring failed; the trace is kept and can be computed again')
+    } else if (run.method.isFinished(run.state)) this.end(run, 'sealed', null)
   }
 
   private end(run: OpenRun, status: 'sealed' | 'stopped' | 'interrupted', reason: string | null): void {
     if (run.ending) return
     run.ending = { status, reason }
     run.storage = 'judgedNotStored'
-    const measured = run.method.viewRun(run.state)
+    const measured = measuredOf(run)
     this.events.emit('changed', run, measured)
     void run.storing.add(() => this.seal(run, measured))
   }

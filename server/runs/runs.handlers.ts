@@ -1,4 +1,5 @@
 import type { Knex } from 'knex'
+import { AppError } from '../errors.ts'
 import { personOf } from '../http/registry.ts'
 import type { HandlersOf } from '../http/registry.ts'
 import { listRuns } from './runs.queries.ts'
@@ -7,7 +8,7 @@ import type { RunsService } from './runs.service.ts'
 export function createRunsHandlers(knex: Knex, runs: RunsService): HandlersOf<'runs'> {
   return {
     'runs.list': async ({ query }) => {
-      const beforeSeq = query.after ? Number(query.after) : undefined
+      const beforeSeq = query.after === undefined ? undefined : placeOf(query.after)
       const rows = await listRuns(knex, { from: query.from, to: query.to, beforeSeq, limit: query.limit + 1 })
       const items = rows.slice(0, query.limit)
       return {
@@ -22,4 +23,13 @@ export function createRunsHandlers(knex: Knex, runs: RunsService): HandlersOf<'r
     'runs.takeOver': ({ params, body }, context) => runs.takeOver(params.id, body, personOf(context)),
     'runs.recompute': ({ params }) => runs.recompute(params.id),
   }
+}
+
+/** Where the page before ended. */
+function placeOf(after: string): number {
+  const seq = Number(after)
+  if (Number.isSafeInteger(seq) && seq > 0) return seq
+  throw new AppError('request.invalid', {
+    fields: [{ path: 'query.after', message: 'the next of the page before' }],
+  })
 }

@@ -15,6 +15,7 @@ import { insertAudit } from '../audit/audit.queries.ts'
 import type { BenchHub } from '../bench/benchHub.ts'
 import { isDuplicate } from '../connect.ts'
 import { AppError } from '../errors.ts'
+import { measuredOf } from './openRun.ts'
 import { recomputeRun } from './recomputeRun.ts'
 import type { Actor, RunBoard } from './runBoard.ts'
 import { viewOfOpenRun, viewOfRow } from './runView.ts'
@@ -45,7 +46,7 @@ export function createRunsService(deps: RunsDeps) {
 
   async function viewOf(id: string): Promise<RunView> {
     const open = board.find(id)
-    if (open) return viewOfOpenRun(open, open.method.viewRun(open.state), hub.isConnected(open.row.benchId))
+    if (open) return viewOfOpenRun(open, measuredOf(open), hub.isConnected(open.row.benchId))
     const row = await findRun(knex, id)
     if (!row?.measured) throw new AppError('run.unknown')
     return viewOfRow(row, row.measured, await findActions(knex, row.seq), hub.isConnected(row.benchId))
@@ -90,7 +91,7 @@ export function createRunsService(deps: RunsDeps) {
     const row = await insertOpenRun(request, setup, person)
     const run = board.find(row.id) ?? board.open(row)
     hub.startRun(run)
-    return viewOfOpenRun(run, run.method.viewRun(run.state), true)
+    return viewOfOpenRun(run, measuredOf(run), true)
   }
 
   async function insertOpenRun(request: RunStart, setup: RunSetup, person: Person): Promise<RunRow> {
