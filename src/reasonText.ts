@@ -1,6 +1,7 @@
 import { AT_MOST, NO_VALUE, formatDb, formatLimits, formatMargin, formatU, formatValue } from './format.ts'
 import type { LevelUnit } from './format.ts'
 import type { RuleResult } from './shared/contract/measured.ts'
+import type { Unit } from './shared/contract/quantities.ts'
 import type { RunView } from './shared/contract/runs.ts'
 import { WHYS, ruleName, stringText } from './texts.ts'
 
@@ -60,15 +61,26 @@ function sentence(result: RuleResult, view: RunView, level: LevelUnit): string {
   const state = STATE_SENTENCES[result.rule]
   if (state) return state
   const { value, low, high, unit } = result
-  const limits = formatLimits(low, high, unit, { level })
-  if (value === null) return `${subject} is outside, limit ${limits}`
+  if (value === null) return `${subject} is outside`
   if (result.rule === 'balance' && which) return balanceSentence(upperFirst(which), result)
   if (result.rule === 'disturbanceCount') {
     return `The contact broke ${formatValue(value, unit)} ${value === 1 ? 'time' : 'times'} in the wiggle, limit ${formatValue(high, unit)}`
   }
   const signed = result.rule === 'meanLevel'
+  const limit = limitText(low, high, unit, { signed, level })
   const bound = result.atMost ? `${AT_MOST} ` : ''
-  return `${subject} is ${bound}${formatValue(value, unit, { signed, level })}, limit ${limits}`
+  return `${subject} is ${bound}${formatValue(value, unit, { signed, level })}, ${limit}`
+}
+
+/** 'limit 4.0 dB', or 'limits −4.0 to +4.0 dB' */
+function limitText(
+  low: number | null,
+  high: number | null,
+  unit: Unit,
+  options: { signed: boolean; level: LevelUnit },
+): string {
+  if (low !== null && high !== null) return `limits ${formatLimits(low, high, unit, options)}`
+  return `limit ${formatValue(low ?? high, unit, options)}`
 }
 
 /** 'String 4, D is 3.4 dB low, limit 2.5 dB' */
@@ -77,8 +89,8 @@ function balanceSentence(which: string, { value, low, high, atMost, why }: RuleR
   const limit = isLow ? low : high
   const by = `${atMost ? 'at least ' : ''}${formatDb(Math.abs(value!))}`
   const shown = why === 'inGuardBand' ? ', not shown to conform' : ''
-  const limitText = limit === null ? NO_VALUE : formatDb(Math.abs(limit))
-  return `${which} is ${by} ${isLow ? 'low' : 'high'}, limit ${limitText}${shown}`
+  const limitShown = limit === null ? NO_VALUE : formatDb(Math.abs(limit))
+  return `${which} is ${by} ${isLow ? 'low' : 'high'}, limit ${limitShown}${shown}`
 }
 
 function detailOf({ margin, expandedU, n, unit }: RuleResult): string {

@@ -26,17 +26,18 @@ export function noiseRows(measured: MeasuredRun, level: LevelUnit, all: boolean)
     snA.value !== null || snFlat.value === null
       ? { name: 'S/N (A), worst', value: formatReading(snA), isOutside: isOutside(measured, 'snA') }
       : { name: 'S/N, worst', value: formatReading(snFlat), isOutside: isOutside(measured, 'snFlat') }
+  const flat = {
+    name: 'broadband',
+    value: formatReading(noise.flat, { level }),
+    isOutside: isOutside(measured, 'noiseFlat'),
+  }
   return [
     {
       name: 'A-weighted',
       value: formatReading(noise.a, { level }),
       isOutside: isOutside(measured, 'noiseA'),
     },
-    {
-      name: 'broadband',
-      value: formatReading(noise.flat, { level }),
-      isOutside: isOutside(measured, 'noiseFlat'),
-    },
+    ...(all || flat.isOutside || noise.a.value === null ? [flat] : []),
     {
       name: `hum ${noise.mainsHz} Hz`,
       value: formatReading(noise.hum, { level }),
