@@ -43,7 +43,7 @@ export function makeFrameRun(
   let serverNext = order.from
   let sendNext = order.from
   let window = order.window
-  let credit = 0
+  let creditMs = 0
   let ended = false
   let closed = false
   // frames of before this start are gone, unless the source can give them again
@@ -54,7 +54,7 @@ export function makeFrameRun(
     const scale = source.timeScale ?? 1
     const ahead =
       scale > 1 ? serverNext + Math.ceil((FAST_AHEAD_S * 1000) / source.frameMs) : Number.MAX_SAFE_INTEGER
-    return Math.min(Math.floor(credit), ahead - held.end())
+    return Math.min(Math.floor(creditMs / source.frameMs), ahead - held.end())
   }
 
   function keep(step: SourceStep): void {
@@ -72,7 +72,7 @@ export function makeFrameRun(
     for (let count = due(); count > 0; count--) {
       if (held.end() - held.first() >= mostHeld) {
         breakWaits = true
-        credit = 0
+        creditMs = 0
         return
       }
       const step = source.next(held.end())
@@ -82,7 +82,7 @@ export function makeFrameRun(
         return
       }
       keep(step)
-      credit = Math.max(0, credit - 1)
+      creditMs = Math.max(0, creditMs - source.frameMs)
     }
   }
 
@@ -96,8 +96,7 @@ export function makeFrameRun(
     isClosed: () => closed,
     elapse(ms) {
       const scale = source.timeScale ?? 1
-      const most = (CATCH_UP_S * 1000 * scale) / source.frameMs
-      credit = Math.min(most, credit + (ms * scale) / source.frameMs)
+      creditMs = Math.min(CATCH_UP_S * 1000 * scale, creditMs + ms * scale)
       make()
     },
     make,

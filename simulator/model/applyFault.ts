@@ -35,7 +35,7 @@ export function applyFault(parts: InstrumentParts, fault: Fault): void {
       press(parts, [1, 0.25, 0, 0, 0.25, 1], -1.5 - 4 * severity)
       return
     case 'hollowMiddle':
-      press(parts, [0, 0.2, 1, 1, 0.2, 0], -1.5 - 3.5 * severity)
+      press(parts, [0, 0.2, 1, 1, 0.2, 0], -1.5 - 4.5 * severity)
       return
     case 'tiltedSaddle':
       // more force at the bass end, less at the treble end
@@ -78,10 +78,10 @@ export function applyFault(parts: InstrumentParts, fault: Fault): void {
       parts.room.fieldV = withBuzz(parts.room.fieldV, 10 * Math.pow(5, severity))
       return
     case 'hissyPreamp':
-      parts.preamp.voltageNoise *= ratioOfDb(6 + 8 * severity)
+      parts.preamp.voltageNoise *= ratioOfDb(10 + 9 * severity)
       return
     case 'crackle':
-      parts.crackle = { perSecond: 2 + 6 * severity, burstV: 60e-6 * Math.pow(3, severity), channel: index }
+      parts.crackle = { perSecond: 0.5 + severity, burstC: 0.8e-12 * Math.pow(2.5, severity), element: index }
       return
     case 'wornJack':
       parts.jack.breaksPerSecond = 0.4 + 1.6 * severity

@@ -40,8 +40,8 @@ export interface CompiledCircuit {
   /** noise at each point, working */
   noise: BandNoise[]
   mains: MainsPower[]
-  /** power gain from a voltage at an input to each point */
-  inputGain: number[]
+  /** power at each point for a charge of 1 coulomb at the input that crackles */
+  chargeGain: number[]
 }
 
 /** One input of the preamp with what hangs on it. */
@@ -134,8 +134,16 @@ export function compileCircuit(
     strings: tuning.map((fundamentalHz, s) => pathsOf(parts, nodes, own, fundamentalHz, s)),
     noise: [...parts.leads.map((e) => channelNoise[e]!), noiseOf(nodes.slice(0, nodeCount))],
     mains: mainsAt(parts, nodes, gain, mainsHz),
-    inputGain: [...parts.leads.map(() => gain * gain), gain * gain],
+    chargeGain: chargeGains(parts, nodes, gain),
   }
+}
+
+/** A charge at an input is a voltage on its capacitance; behind buffers only that channel and the jack have it. */
+function chargeGains(parts: InstrumentParts, nodes: readonly InputNode[], gain: number): number[] {
+  const node = nodes[parts.crackle.element]!
+  const power = node.shorted ? 0 : (gain / node.capacitanceF) ** 2
+  const here = (e: number): boolean => parts.circuit === 'parallel' || e === parts.crackle.element
+  return [...parts.leads.map((e) => (here(e) ? power : 0)), power]
 }
 
 function pathsOf(

@@ -90,10 +90,10 @@ export interface RoomParts {
 
 export interface CrackleParts {
   perSecond: number
-  /** typical voltage of a burst at the input, V rms */
-  burstV: number
-  /** the channel whose input crackles (buffered circuit), 0 = channel 1 */
-  channel: number
+  /** charge that a typical burst moves at an input, coulomb rms: the node's capacitance makes a voltage of it */
+  burstC: number
+  /** the element whose input crackles (buffered circuit), 0 = element 1 */
+  element: number
 }
 
 export interface InstrumentParts {
@@ -196,7 +196,7 @@ export function makeInstrument(seed: number, circuit: Circuit): InstrumentParts 
       thumpTauS: 0.3 + 0.1 * random.uniform(),
     },
     room: { temperatureK: 296, fieldV: ROOM_HARMONICS.map((share) => share * ROOM_MAINS_V) },
-    crackle: { perSecond: 0, burstV: 0, channel: 0 },
+    crackle: { perSecond: 0, burstC: 0, element: 0 },
     benchLoopV: [],
   }
 }

@@ -115,14 +115,13 @@ export function makeModelledBench(options: ModelledBenchOptions): ModelledBench 
     if (!(crackle.perSecond > 0)) return
     if (burstFrames === 0 && random.noise.uniform() < crackle.perSecond * frameS) {
       burstFrames = 1 + Math.floor(random.noise.uniform() * 2)
-      burstPower = crackle.burstV ** 2 * random.noise.exponential(1)
+      burstPower = crackle.burstC ** 2 * random.noise.exponential(1)
     }
     if (burstFrames === 0) return
     burstFrames -= 1
     for (let point = firstPoint; point < POINTS; point++) {
-      if (parts.circuit === 'buffered' && point < JACK && point !== crackle.channel) continue
-      flat[point]! += burstPower * circuit.inputGain[point]!
-      a[point]! += 0.6 * burstPower * circuit.inputGain[point]!
+      flat[point]! += burstPower * circuit.chargeGain[point]!
+      a[point]! += 0.6 * burstPower * circuit.chargeGain[point]!
     }
   }
 
