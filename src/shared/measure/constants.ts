@@ -76,11 +76,11 @@ export const QUIET_SPREAD_DB = 3
 /** ms, shortest muted stretch, and shortest when hum is judged. Design. */
 export const NOISE_LEAST_MS = 2000
 export const NOISE_LEAST_WITH_HUM_MS = 5000
-/** ms without a quiet stretch after which the screen says so and a person may go on with the quietest one. */
+/** ms without a quiet stretch after which the screen says so and a person may go on with the latest one. */
 export const NOT_YET_QUIET_MS = 8000
 /**
- * ms after which the quietest stretch is taken as it is: an instrument that crackles is never quiet and must be
- * judged noisy, not waited for.
+ * ms after which the latest stretch is taken as it is: an instrument that crackles is never quiet and must be judged
+ * noisy, not waited for.
  */
 export const NOISE_PATIENCE_MS = 30_000
 

@@ -40,9 +40,6 @@ export interface NoiseStretch {
   /** blocks of the quiet stretch up to now, at most `wanted`, and the frame that it began with */
   quiet: number
   quietFromFrame: number
-  /** the quietest window seen, whether quiet or not */
-  best: NoiseSums | null
-  bestPower: number
 }
 
 export function createNoiseStretch(channels: number, frameMs: number, stretchMs: number): NoiseStretch {
@@ -62,12 +59,10 @@ export function createNoiseStretch(channels: number, frameMs: number, stretchMs:
     clean: 0,
     quiet: 0,
     quietFromFrame: 0,
-    best: null,
-    bestPower: Infinity,
   }
 }
 
-/** Starts the search again; what was quietest stays known. */
+/** Starts the search again. */
 export function restartNoiseStretch(stretch: NoiseStretch): void {
   stretch.power.fill(0)
   stretch.squares.fill(0)
@@ -84,7 +79,7 @@ function addPower(stretch: NoiseStretch, point: number, mdb: number): void {
   stretch.squares[point]! += power * power
 }
 
-/** Takes one frame; `disturbed`: a channel stands 10 dB above its own floor, or the plug is out. */
+/** Takes one frame; `disturbed`: a channel stands 10 dB above its own floor. */
 export function takeNoiseFrame(
   stretch: NoiseStretch,
   frameNo: number,
@@ -99,6 +94,11 @@ export function takeNoiseFrame(
   addPower(stretch, JACK_A, frame.jackAMdb)
   if (disturbed) stretch.onsetInBlock = true
   if (++stretch.inBlock === stretch.blockFrames) closeBlock(stretch, frameNo)
+}
+
+/** There is a window as long as a stretch, quiet or not. */
+export function hasWindow(stretch: NoiseStretch): boolean {
+  return stretch.blocks >= stretch.wanted
 }
 
 /** The quiet stretch is as long as it must be. */
@@ -124,7 +124,6 @@ function closeBlock(stretch: NoiseStretch, frameNo: number): void {
   if (!(wasQuiet && isQuiet(stretch))) {
     stretch.quietFromFrame = frameNo + 1 - stretch.quiet * stretch.blockFrames
   }
-  if (stretch.blocks >= stretch.wanted) keepQuietest(stretch, frameNo)
 }
 
 /** How many of the latest clean blocks, going back, are alike on every flat point. */
@@ -169,19 +168,6 @@ export function latestSums(stretch: NoiseStretch, lastFrame: number): NoiseSums 
     }
   }
   return sums
-}
-
-function keepQuietest(stretch: NoiseStretch, frameNo: number): void {
-  const sums = latestSums(stretch, frameNo)
-  let total = 0
-  for (let point = 0; point <= JACK; point++) {
-    const inUse = point < stretch.channels || point === JACK
-    if (inUse && !Number.isNaN(sums.power[point]!)) total += sums.power[point]!
-  }
-  if (total < stretch.bestPower) {
-    stretch.bestPower = total
-    stretch.best = sums
-  }
 }
 
 /** Noise of one point over a stretch. */

@@ -31,7 +31,7 @@ import {
 import { decideRun, stringsInGuardBand } from './judgeRun.ts'
 import { forgetLevels, meanPowerIn, pushFrame } from './levelRing.ts'
 import { dbOfPower } from './meanPowerDb.ts'
-import { isQuiet, latestSums, restartNoiseStretch, takeNoiseFrame } from './noiseStretch.ts'
+import { hasWindow, isQuiet, latestSums, restartNoiseStretch, takeNoiseFrame } from './noiseStretch.ts'
 import { onsetsAt } from './onsetWatch.ts'
 import { forgetPitches, logPitch } from './pitchLog.ts'
 import { endPlucks, interruptPluck, takeNoSignal, watchPlucks } from './plucks.ts'
@@ -233,7 +233,8 @@ function foldNoise(state: RunState, frameNo: number, frame: Frame): void {
   const { stretch, onsets, ring } = state
   onsetsAt(onsets, ring, frameNo)
   const quietBefore = stretch.quiet > 0
-  takeNoiseFrame(stretch, frameNo, frame, onsets.above !== 0 || frame.plugged === false)
+  if (frame.plugged === false) restartNoiseStretch(stretch)
+  else takeNoiseFrame(stretch, frameNo, frame, onsets.above !== 0)
   if (stretch.quiet > 0 !== quietBefore) state.changes++
   if (elapsedMs(state) === framesOf(NOT_YET_QUIET_MS, state.setup.frameMs) * state.setup.frameMs)
     state.changes++
@@ -247,16 +248,17 @@ function foldNoise(state: RunState, frameNo: number, frame: Frame): void {
       keepNoise(state, latestSums(stretch, frameNo))
       advance(state)
     }
-  } else if (elapsedMs(state) >= NOISE_PATIENCE_MS) takeQuietest(state)
+  } else if (elapsedMs(state) >= NOISE_PATIENCE_MS && hasWindow(stretch)) takeLatest(state)
 }
 
-/** Goes on with the quietest stretch there was, quiet or not; does nothing before there is one. */
-function takeQuietest(state: RunState): void {
-  const { best } = state.stretch
-  if (best === null) return
-  state.quietFrames = { from: best.fromFrame, to: best.toFrame + 1 }
-  for (const event of state.humWaiting) keepHumWithin(state, event, best.fromFrame, best.toFrame + 1)
-  keepNoise(state, best)
+/** Goes on with the latest stretch as it is. Not with the quietest one: that would hide a crackle. */
+function takeLatest(state: RunState): void {
+  const { stretch } = state
+  const lastFrame = state.frames - 1 - stretch.inBlock
+  const sums = latestSums(stretch, lastFrame)
+  state.quietFrames = { from: sums.fromFrame, to: lastFrame + 1 }
+  for (const event of state.humWaiting) keepHumWithin(state, event, sums.fromFrame, lastFrame + 1)
+  keepNoise(state, sums)
   advance(state)
 }
 
@@ -319,7 +321,7 @@ export function refusalToGoOn(state: RunState): string | null {
     case 'settle':
       return settledMs(state) >= SETTLE_LEAST_MS ? null : 'Wait until the preamp has settled, at least 3 s.'
     case 'noise':
-      if (elapsedMs(state) >= NOT_YET_QUIET_MS && state.stretch.best !== null) return null
+      if (elapsedMs(state) >= NOT_YET_QUIET_MS && hasWindow(state.stretch)) return null
       return 'Keep the strings muted; the quiet stretch is found by itself.'
     case 'jackRest':
       return 'Hold still for a second; the run goes on by itself.'
@@ -343,7 +345,7 @@ export function goOn(state: RunState, by: 'person' | 'pedal'): void {
     case 'entry':
       return advance(state)
     case 'noise':
-      return takeQuietest(state)
+      return takeLatest(state)
     case 'strings':
       return sayNoSignal(state, askedString(state)!)
     case 'wiggleReady':
