@@ -1,9 +1,12 @@
 import { onScopeDispose } from 'vue'
 
-/** Keys of a scanner follow one another faster than a hand can type. */
-export const BURST_GAP_MS = 50
-/** On average they are faster still; two keys rolled under one hand are not a scan. */
+/** On average the keys of a scanner follow one another faster than a hand can type. */
 export const BURST_MEAN_GAP_MS = 35
+/**
+ * A single gap may be longer: cutting a scan in two at a hiccup would make a shorter, wrong serial of it. What stands
+ * close before a scan therefore belongs to it, and then the code is refused rather than misread.
+ */
+export const BURST_LONGEST_GAP_MS = 300
 export const BURST_MIN_CHARACTERS = 4
 /** Enter may come a little later than the characters. */
 const ENTER_GAP_MS = 120
@@ -24,9 +27,8 @@ interface Burst {
   characters: string
   startedAt: number
   lastAt: number
-  /** the field that the characters fall into, and what it held before */
-  field: Field | null
-  fieldValue: string
+  /** fields that characters fell into, and what each held before */
+  fields: Map<Field, string>
 }
 
 /**
@@ -59,15 +61,16 @@ export function useScanner(options: ScannerOptions): void {
       burst = null
       return
     }
-    if (burst && at - burst.lastAt <= BURST_GAP_MS) {
-      burst.characters += event.key
-      burst.lastAt = at
-    } else {
-      const field = fieldOf(event.target)
-      burst = { characters: event.key, startedAt: at, lastAt: at, field, fieldValue: field?.value ?? '' }
+    if (!burst || at - burst.lastAt > BURST_LONGEST_GAP_MS) {
+      burst = { characters: '', startedAt: at, lastAt: at, fields: new Map() }
     }
+    const field = fieldOf(event.target)
+    // The focus may move while a scan comes in.
+    if (field && !burst.fields.has(field)) burst.fields.set(field, field.value)
+    burst.characters += event.key
+    burst.lastAt = at
     // Space within a burst would press the button that has the focus, or scroll.
-    if (event.key === ' ' && burst.characters.length > 1 && !burst.field) event.preventDefault()
+    if (event.key === ' ' && burst.characters.length > 1 && !field) event.preventDefault()
   }
 
   target.addEventListener('keydown', onKeyDown, { capture: true })
@@ -88,7 +91,9 @@ function fieldOf(target: EventTarget | null): Field | null {
 }
 
 function restore(burst: Burst): void {
-  if (!burst.field || burst.field.value === burst.fieldValue) return
-  burst.field.value = burst.fieldValue
-  burst.field.dispatchEvent(new Event('input', { bubbles: true }))
+  for (const [field, before] of burst.fields) {
+    if (field.value === before) continue
+    field.value = before
+    field.dispatchEvent(new Event('input', { bubbles: true }))
+  }
 }

@@ -15,9 +15,11 @@ export const useInstrumentsStore = defineStore('instruments', () => {
   const known = ref(false)
   const problem = shallowRef<ApiProblem | null>(null)
   let running: AbortController | null = null
+  let asked: string | null = null
 
   async function fetchPage(after: string | null): Promise<void> {
     running?.abort()
+    asked = after
     const mine = new AbortController()
     running = mine
     loading.value = true
@@ -50,9 +52,14 @@ export const useInstrumentsStore = defineStore('instruments', () => {
     return next.value === null ? Promise.resolve() : fetchPage(next.value)
   }
 
+  /** The page that was asked for last, once more. */
+  function again(): Promise<void> {
+    return fetchPage(asked)
+  }
+
   function read(serial: string, signal?: AbortSignal): Promise<InstrumentView> {
     return api('instruments.read', { params: { serial } }, { signal })
   }
 
-  return { items, next, search, loading, known, problem, load, more, read }
+  return { items, next, search, loading, known, problem, load, more, again, read }
 })

@@ -49,7 +49,7 @@ export interface EvenLinePost {
 /** Drawn half-height in dB unless the permitted band needs more: the same picture for every instrument. */
 const SCALE_DB = 6
 /** The posts stand a little left of the middle of their sixth, because the number stands at their right. */
-const PLACE_IN_SIXTH = 0.4
+const PLACE_IN_SIXTH = 0.36
 
 /** dB from the rule to the edge of the drawing. */
 export function scaleDbOf(lowDb: number | null, highDb: number | null): number {
