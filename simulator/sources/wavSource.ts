@@ -1,4 +1,4 @@
-import type { BenchEvent, RunOrder } from '../../src/shared/contract/frames.ts'
+import type { BenchEvent, BenchVerify, RunOrder } from '../../src/shared/contract/frames.ts'
 import { frameStart } from '../signal/frameAnalyser.ts'
 import { RecordingError } from '../signal/recordingError.ts'
 import { fullScaleOf } from '../signal/sampleFormat.ts'
@@ -7,6 +7,7 @@ import { WavFile } from '../signal/wav.ts'
 import { recordedSignal } from './recordedSignal.ts'
 import type { RecordedSignal, RecordedSignalOptions } from './recordedSignal.ts'
 import type { BenchSource, SourceStep } from './source.ts'
+import { verifyAnalysis } from './verifyAnalysis.ts'
 
 /** A recording as a bench: every run reads it from its first sample, and the same frame is the same each time. */
 export class WavSource implements BenchSource {
@@ -73,6 +74,10 @@ export class WavSource implements BenchSource {
     }
   }
 
+  verifySelf(): BenchVerify {
+    return verifyAnalysis(this.frameSettings())
+  }
+
   finish(): void {
     this.order = null
     this.analyser = null
@@ -84,19 +89,20 @@ export class WavSource implements BenchSource {
   }
 
   private toBeginning(order: RunOrder): void {
-    const { format } = this.file.header
-    const { offsetDb, frameMs, mainsHz } = this.signal
     this.file.rewind()
     this.position = 0
     this.analyser = new SignalAnalyser({
-      rateHz: format.rateHz,
-      fullScale: fullScaleOf(format),
-      offsetDb,
-      frameMs,
-      mainsHz,
+      ...this.frameSettings(),
+      mainsHz: this.signal.mainsHz,
       noiseStretchMs: order.noiseStretchMs,
       expectedHz: order.expectedHz,
     })
+  }
+
+  private frameSettings() {
+    const { format } = this.file.header
+    const { offsetDb, frameMs } = this.signal
+    return { rateHz: format.rateHz, fullScale: fullScaleOf(format), offsetDb, frameMs }
   }
 
   private samplesOf(frameNo: number): number {
