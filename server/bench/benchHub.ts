@@ -125,5 +125,6 @@ export function orderOf(run: OpenRun): RunOrder {
     window: WINDOW_FRAMES,
     noiseStretchMs: setup.sheet.noiseStretchMs,
     expectedHz: setup.model.tuning.map((pitch) => pitch.pitchesHz),
+    circuit: setup.model.circuit,
   }
 }

@@ -18,6 +18,7 @@ import type { BenchSource } from './source.ts'
 export interface ModelledSourceOptions {
   seed: number
   channelKind: ChannelKind
+  /** until a run's model says otherwise */
   circuit: Circuit
   frameMs?: FrameMs
   mainsHz?: 50 | 60
@@ -63,10 +64,17 @@ export const ONE_CHANNEL_CAPABILITIES: readonly Capability[] = SIX_CHANNEL_CAPAB
 
 const DEFAULT_SCATTER_DB = 0.8
 
+/** Which instrument lies on the bench, whatever circuit the run's model has. */
+interface PlaceWish {
+  seed: number
+  faults: readonly Fault[]
+  scatterDb: number
+}
+
 export function makeModelledSource(options: ModelledSourceOptions): ModelledSource {
   const frameMs = options.frameMs ?? 10
   const mainsHz = options.mainsHz ?? 50
-  const { channelKind, circuit } = options
+  const { channelKind } = options
   const capabilities =
     options.capabilities ?? (channelKind === 'six' ? SIX_CHANNEL_CAPABILITIES : ONE_CHANNEL_CAPABILITIES)
   const input = makeBenchInput(options.seed, channelKind, frameMs / 1000)
@@ -74,17 +82,19 @@ export function makeModelledSource(options: ModelledSourceOptions): ModelledSour
   const makeId = options.makeId ?? randomUUID
   let tuning: Tuning = STANDARD_TUNING
   let noiseStretchMs = 5000
-  let placed = place(options.seed, options.faults ?? [], options.scatterDb ?? DEFAULT_SCATTER_DB)
+  let circuit = options.circuit
+  let wish: PlaceWish = {
+    seed: options.seed,
+    faults: options.faults ?? [],
+    scatterDb: options.scatterDb ?? DEFAULT_SCATTER_DB,
+  }
+  let placed = place(wish)
   let hand = makeAutomaticHand(options.seed, frameMs)
   let handOn = options.hand ?? false
   let timeScale = options.timeScale ?? 1
   let serverSeen = true
 
-  function place(
-    seed: number,
-    faults: readonly Fault[],
-    scatterDb: number,
-  ): { parts: InstrumentParts; bench: ModelledBench } {
+  function place({ seed, faults, scatterDb }: PlaceWish): { parts: InstrumentParts; bench: ModelledBench } {
     const parts = applyFaults(makeInstrument(seed, circuit), faults)
     const bench = makeModelledBench({
       parts,
@@ -132,6 +142,10 @@ export function makeModelledSource(options: ModelledSourceOptions): ModelledSour
     start(order) {
       tuning = STANDARD_TUNING.map((standardHz, s) => order.expectedHz[s]?.[0] ?? standardHz)
       noiseStretchMs = order.noiseStretchMs
+      if (order.circuit !== undefined && order.circuit !== circuit) {
+        circuit = order.circuit
+        placed = place(wish)
+      }
       placed.bench.restart(tuning, noiseStretchMs)
       hand.restart()
     },
@@ -160,7 +174,8 @@ export function makeModelledSource(options: ModelledSourceOptions): ModelledSour
     simulate(command) {
       switch (command.kind) {
         case 'place':
-          placed = place(command.seed, command.faults, command.scatterDb)
+          wish = { seed: command.seed, faults: command.faults, scatterDb: command.scatterDb }
+          placed = place(wish)
           hand = makeAutomaticHand(command.seed, frameMs)
           return
         case 'pluck':

@@ -153,6 +153,8 @@ export const RunOrder = z.object({
   /** how long the muted stretch must be, so that the bench can measure hum over it */
   noiseStretchMs: z.int(),
   expectedHz: z.array(z.array(z.number())),
+  /** circuit of the model: a simulated bench lays an instrument of that kind on itself; a real one needs it not */
+  circuit: z.enum(['parallel', 'buffered']).optional(),
 })
 export type RunOrder = z.infer<typeof RunOrder>
 
