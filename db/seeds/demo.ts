@@ -119,9 +119,12 @@ function rule(id: RuleId, more: Partial<SheetRule> = {}): SheetRule {
   }
 }
 
-/** Mean over modelled instruments without a fault, string 1 first; sum zero. */
-export const DEMO_PATTERN_DB = [0, 0, 0, 0, 0, 0]
-export const DEMO_REFERENCE_DB = -22
+/**
+ * Mean balance of 400 modelled instruments without a fault, string 1 first, sum zero; six-channel and one-channel
+ * benches read patterns up to 0.15 dB from this one.
+ */
+export const DEMO_PATTERN_DB = [-1.9, -0.45, 0.72, 0.38, 0.52, 0.73]
+export const DEMO_REFERENCE_DB = -18.8
 
 export function demoSheets(): { sheet: ThresholdSheet; modelId: string }[] {
   return DEMO_MODELS.map((of) => {
@@ -139,7 +142,7 @@ export function demoSheets(): { sheet: ThresholdSheet; modelId: string }[] {
       wiggleMs: 6000,
       patternDb: of.isRecording ? null : DEMO_PATTERN_DB,
       patternUDb: of.isRecording ? 0 : 0.15,
-      patternInstruments: of.isRecording ? 0 : 24,
+      patternInstruments: of.isRecording ? 0 : 400,
       referenceLevelDb: of.isRecording ? -30 : DEMO_REFERENCE_DB,
       rules,
     }

@@ -4,7 +4,7 @@ import type { Knex } from 'knex'
 import type { Logger } from 'pino'
 import type { FrameBatch } from '../../src/shared/contract/frames.ts'
 import { LIVE_UPDATES_PER_SECOND } from '../../src/shared/contract/live.ts'
-import type { MeasuredRun } from '../../src/shared/contract/measured.ts'
+import { MeasuredRun } from '../../src/shared/contract/measured.ts'
 import type { RunAction, RunActionBody } from '../../src/shared/contract/runs.ts'
 import { insertAudit } from '../audit/audit.queries.ts'
 import { ingestFrames } from '../bench/ingestFrames.ts'
@@ -28,6 +28,7 @@ import { unpackSegment } from './traceSegment.ts'
 
 /** A segment of the trace is committed when this much run time has come in. */
 export const SEGMENT_MS = 30_000
+const MEASURING_FAILED = 'measuring failed; the trace is kept and can be computed again'
 const RETRY_MS = [200, 500, 1000, 2000, 5000]
 const LEVELS_EVERY_MS = 1000 / LIVE_UPDATES_PER_SECOND
 
@@ -269,17 +270,24 @@ export class RunBoard {
     if (run.ending) return
     if (run.fault) {
       this.deps.log.error({ err: run.fault, run: run.row.id }, 'measuring failed, the trace is kept')
-      this.end(run, 'interrupted', 'measuring failed; the trace is kept and can be computed again')
+      this.end(run, 'interrupted', MEASURING_FAILED)
     } else if (run.method.isFinished(run.state)) this.end(run, 'sealed', null)
   }
 
   private end(run: OpenRun, status: 'sealed' | 'stopped' | 'interrupted', reason: string | null): void {
     if (run.ending) return
-    run.ending = { status, reason }
     run.storage = 'judgedNotStored'
     const measured = measuredOf(run)
-    this.events.emit('changed', run, measured)
-    void run.storing.add(() => this.seal(run, measured))
+    const shape = MeasuredRun.safeParse(measured)
+    if (!shape.success) {
+      // What cannot be read back is not stored as readings; the trace is, and the run can be computed again.
+      this.deps.log.error({ err: shape.error, run: run.row.id }, 'readings do not have their shape')
+      run.fault ??= shape.error
+      run.measured = run.method.viewRun(run.method.startRun(run.row.setup))
+    }
+    run.ending = shape.success ? { status, reason } : { status: 'interrupted', reason: MEASURING_FAILED }
+    this.events.emit('changed', run, run.measured)
+    void run.storing.add(() => this.seal(run, run.measured))
   }
 
   private async seal(run: OpenRun, measured: MeasuredRun): Promise<void> {
