@@ -39,7 +39,7 @@ export function createHandlers(deps: HandlerDeps): Handlers {
     ...createHealthHandlers(knex, about),
     'openapi.read': () => Promise.resolve(openApi),
     'protocol.read': () => Promise.resolve(deps.protocolSchema),
-    ...createAuthHandlers({ auth, sessions, config }),
+    ...createAuthHandlers({ knex, auth, sessions, config }),
     ...createCautionsHandlers(knex, config, now),
     ...createScanHandlers(knex),
     ...createModelsHandlers(knex, now),

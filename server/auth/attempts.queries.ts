@@ -1,3 +1,4 @@
+import { isIPv6 } from 'node:net'
 import type { Knex } from 'knex'
 import { sha256 } from './randomToken.ts'
 import type { AttemptKind, Attempts } from './signInDelay.ts'
@@ -14,12 +15,26 @@ export interface AttemptSubjects {
   known: AttemptSubject
 }
 
+/** Someone with IPv6 has a whole /64 of addresses, so all of it counts as one. */
+export function networkOf(address: string): string {
+  if (!isIPv6(address) || address.includes('.')) return address
+  const [head = '', tail] = address.split('%')[0]!.split('::')
+  const before = head.split(':').filter(Boolean)
+  const after = tail?.split(':').filter(Boolean) ?? []
+  const gap = tail === undefined ? [] : Array<string>(8 - before.length - after.length).fill('0')
+  return [...before, ...gap, ...after]
+    .slice(0, 4)
+    .map((group) => Number.parseInt(group, 16).toString(16))
+    .join(':')
+}
+
 /** Hashed, because what is typed as a name may be anything, and addresses are personal data. */
 export function attemptSubjects(account: string, address: string): AttemptSubjects {
+  const network = networkOf(address)
   return {
     account: { kind: 'account', hash: sha256(account) },
-    address: { kind: 'address', hash: sha256(address) },
-    known: { kind: 'known', hash: sha256(`${account}\n${address}`) },
+    address: { kind: 'address', hash: sha256(network) },
+    known: { kind: 'known', hash: sha256(`${account}\n${network}`) },
   }
 }
 

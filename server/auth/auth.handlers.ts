@@ -1,13 +1,16 @@
+import type { Knex } from 'knex'
 import type { SignedIn } from '../../src/shared/contract/auth.ts'
 import type { Config } from '../config.ts'
 import { AppError } from '../errors.ts'
 import { personOf } from '../http/registry.ts'
 import type { HandlersOf, RequestContext } from '../http/registry.ts'
+import { findWorkshop } from '../workshop/workshop.queries.ts'
 import type { AuthService, Caller } from './auth.service.ts'
 import { REFRESH_COOKIE, clearSignInCookies, cookieOf, setSignInCookies } from './cookies.ts'
 import type { IssuedTokens, Sessions, SignedInPerson } from './sessions.ts'
 
 export interface AuthHandlerDeps {
+  knex: Knex
   auth: AuthService
   sessions: Sessions
   config: Config
@@ -22,13 +25,19 @@ function signedInOf(context: RequestContext): SignedInPerson {
 }
 
 export function createAuthHandlers({
+  knex,
   auth,
   sessions,
   config,
 }: AuthHandlerDeps): HandlersOf<'auth'> & HandlersOf<'invites'> {
-  const answer = (issued: IssuedTokens, { res }: RequestContext): SignedIn => {
+  const withWorkshop = async ({ person, sessionId, tokenUntil }: SignedInPerson): Promise<SignedIn> => {
+    const { name, timeZone } = await findWorkshop(knex, config.workshopTimeZone)
+    return { person, sessionId, tokenUntil, workshop: { name, timeZone } }
+  }
+
+  const answer = (issued: IssuedTokens, { res }: RequestContext): Promise<SignedIn> => {
     setSignInCookies(res, issued, config)
-    return { person: issued.person, sessionId: issued.sessionId, tokenUntil: issued.tokenUntil }
+    return withWorkshop(issued)
   }
 
   return {
@@ -38,7 +47,7 @@ export function createAuthHandlers({
     'auth.refresh': async (_input, context) => {
       try {
         const refreshToken = cookieOf(context.req.headers.cookie, REFRESH_COOKIE)
-        return answer(await sessions.refresh(refreshToken), context)
+        return await answer(await sessions.refresh(refreshToken), context)
       } catch (error) {
         // Cookies that are of no more use; when the database is away they still are.
         if (error instanceof AppError) clearSignInCookies(context.res, config)
@@ -52,7 +61,7 @@ export function createAuthHandlers({
       return {}
     },
 
-    'auth.me': (_input, context) => Promise.resolve(signedInOf(context)),
+    'auth.me': (_input, context) => withWorkshop(signedInOf(context)),
 
     'invites.look': async ({ params }) => {
       const { name, email, expiresAt } = await auth.lookAtInvite(params.token)

@@ -8,6 +8,7 @@ import { AppError } from '../errors.ts'
 import { createAccessTokens } from './accessTokens.ts'
 import { TOKEN_COOKIE, cookieOf } from './cookies.ts'
 import {
+  deleteOldRefreshTokens,
   endSessions,
   findPerson,
   findPersonOfSession,
@@ -59,6 +60,7 @@ type RefreshOutcome = { issued: IssuedTokens } | { ended: string[] }
 export const REUSE_GRACE_MS = 10_000
 
 const DAY_MS = 86_400_000
+const TIDY_EVERY_MS = 60 * 60_000
 
 /**
  * Each request asks the database whether the session is open: one query by primary key, and a sign-out, a change of
@@ -74,6 +76,14 @@ export function createSessions(knex: Knex, config: Config, now: () => Date = () 
   const announce = (ids: string[], reason: EndReason) => {
     for (const id of ids) lastKnown.forget(id)
     if (ids.length > 0) for (const listener of listeners) listener(ids, reason)
+  }
+
+  let tidiedAt = 0
+  const tidy = async () => {
+    const at = now().getTime()
+    if (at - tidiedAt < TIDY_EVERY_MS) return
+    tidiedAt = at
+    await deleteOldRefreshTokens(knex, new Date(at - DAY_MS))
   }
 
   const expiry = (at: Date) => new Date(at.getTime() + config.sessionDays * DAY_MS)
@@ -147,6 +157,7 @@ export function createSessions(knex: Knex, config: Config, now: () => Date = () 
     },
     refresh: async (refreshToken) => {
       if (!refreshToken) throw new AppError('sign-in.required')
+      await tidy()
       const hash = sha256(refreshToken)
       const found = await findRefreshToken(knex, hash)
       if (!found) throw new AppError('sign-in.required')

@@ -5,7 +5,7 @@ import { insertAudit } from '../audit/audit.queries.ts'
 import type { Config } from '../config.ts'
 import { isDuplicate } from '../connect.ts'
 import { shiftKeyAt } from '../workshop/shiftKeyAt.ts'
-import { findWorkshopClock } from '../workshop/workshop.queries.ts'
+import { findWorkshop } from '../workshop/workshop.queries.ts'
 import { findAcknowledgedAt, insertAcknowledgement } from './cautions.queries.ts'
 
 type ClockConfig = Pick<Config, 'workshopTimeZone'>
@@ -17,7 +17,7 @@ export async function readCautions(
   userId: string,
   now: Date,
 ): Promise<Cautions> {
-  const shift = shiftKeyAt(now, await findWorkshopClock(knex, config.workshopTimeZone))
+  const shift = shiftKeyAt(now, await findWorkshop(knex, config.workshopTimeZone))
   const at = await findAcknowledgedAt(knex, userId, shift)
   return { acknowledged: at !== null, shift, acknowledgedAt: at?.toISOString() ?? null }
 }

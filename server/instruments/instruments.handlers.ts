@@ -4,7 +4,6 @@ import { Id } from '../../src/shared/contract/quantities.ts'
 import { AppError } from '../errors.ts'
 import type { HandlersOf } from '../http/registry.ts'
 import { runSummariesOfInstrument } from '../runs/runs.queries.ts'
-import { foldedSerial } from './foldedSerial.ts'
 import { findInstrument, listInstruments } from './instruments.queries.ts'
 import type { InstrumentPlace } from './instruments.queries.ts'
 
@@ -25,9 +24,7 @@ function placeOf(cursor: string): InstrumentPlace {
 export function createInstrumentsHandlers(knex: Knex): HandlersOf<'instruments'> {
   return {
     'instruments.list': async ({ query }) => {
-      const search = foldedSerial(query.search ?? '')
-      // Words without a letter or digit are in no serial.
-      if (query.search?.trim() && !search) return { items: [], next: null }
+      const search = query.search?.trim() ?? ''
       const after = query.after === undefined ? null : placeOf(query.after)
       const rows = await listInstruments(knex, { search, after, limit: query.limit + 1 })
       const items = rows.slice(0, query.limit)

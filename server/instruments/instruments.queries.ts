@@ -50,7 +50,7 @@ export interface InstrumentPlace {
   id: string
 }
 
-/** Newest first, those after the place; the search finds a part of a serial whichever way O, 0, I and 1 were read. */
+/** Newest first, those after the place; see `matching` for the search. */
 export async function listInstruments(
   knex: Knex,
   filter: { search: string; after: InstrumentPlace | null; limit: number },
@@ -60,8 +60,7 @@ export async function listInstruments(
     .orderBy('instruments.id', 'desc')
     .limit(filter.limit)
     .select(COLUMNS)
-  // Folding leaves letters and digits only, so the pattern needs no escaping.
-  if (filter.search) void query.where('instruments.serial_folded', 'like', `%${foldedSerial(filter.search)}%`)
+  if (filter.search) void matching(query, filter.search)
   const { after } = filter
   if (after) {
     void query
@@ -70,6 +69,17 @@ export async function listInstruments(
       .whereRaw('(instruments.created_at < ? or instruments.id < ?)', [after.createdAt, after.id])
   }
   return ((await query) as RawInstrument[]).map(summaryOf)
+}
+
+/** A part of a serial, whichever way O, 0, I and 1 were read, or a part of the model's name. */
+function matching(query: Knex.QueryBuilder, search: string): Knex.QueryBuilder {
+  // Folding leaves letters and digits only, so that pattern needs no escaping; nothing left is in no serial.
+  const serial = foldedSerial(search)
+  const name = search.replace(/[\\%_]/g, '\\$&')
+  return query.whereRaw('(models.name like ? or instruments.serial_folded like ?)', [
+    `%${name}%`,
+    serial ? `%${serial}%` : '',
+  ])
 }
 
 export async function findInstrument(

@@ -1,5 +1,5 @@
 import type { Knex } from 'knex'
-import { Model, RevisionStatus } from '../../src/shared/contract/thresholds.ts'
+import { Model, RevisionStatus, ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
 import type { SheetSummary } from '../../src/shared/contract/thresholds.ts'
 import type { ModelView } from '../../src/shared/contract/workshop.ts'
 import { fromJson } from '../runs/runs.queries.ts'
@@ -49,11 +49,29 @@ export async function listModels(knex: Knex, now: Date): Promise<ModelView[]> {
     .orderBy('revision')
     .select<RawRevision[]>('model_id', 'id', 'label', 'revision', 'status', 'in_force_from')
   // The last of a model in this order is the one in force.
-  const inForce = new Map(revisions.map((row) => [row.model_id, sheetOf(row)]))
-  return models.map((row) => ({ ...modelOf(row), sheetInForce: inForce.get(row.id) ?? null }))
+  const inForce = new Map(revisions.map((row) => [row.model_id, row]))
+  const sheets = await findSheets(
+    knex,
+    [...inForce.values()].map(({ id }) => id),
+  )
+  return models.map((row) => {
+    const revision = inForce.get(row.id)
+    return {
+      ...modelOf(row),
+      sheetInForce: revision ? summaryOf(revision) : null,
+      sheet: (revision && sheets.get(revision.id)) ?? null,
+    }
+  })
 }
 
-function sheetOf(row: RawRevision): SheetSummary {
+async function findSheets(knex: Knex, ids: string[]): Promise<Map<string, ThresholdSheet>> {
+  const rows = await knex('threshold_revisions')
+    .whereIn('id', ids)
+    .select<{ id: string; sheet: unknown }[]>('id', 'sheet')
+  return new Map(rows.map(({ id, sheet }) => [id, ThresholdSheet.parse(fromJson(sheet))]))
+}
+
+function summaryOf(row: RawRevision): SheetSummary {
   return {
     id: row.id,
     label: row.label,

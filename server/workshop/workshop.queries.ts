@@ -15,6 +15,12 @@ export interface WorkshopClock {
   shifts: Shift[]
 }
 
+interface RawWorkshop {
+  name: string
+  time_zone: string
+  shifts: unknown
+}
+
 /** Common practice of three shifts, no source; holds until the workshop has settings of its own. */
 export const DEFAULT_SHIFTS: readonly Shift[] = [
   { name: 'early', from: '06:00' },
@@ -22,11 +28,12 @@ export const DEFAULT_SHIFTS: readonly Shift[] = [
   { name: 'night', from: '22:00' },
 ]
 
-export async function findWorkshopClock(knex: Knex, fallbackTimeZone: string): Promise<WorkshopClock> {
-  const row = await knex('workshop_settings').first<{ time_zone: string; shifts: unknown } | undefined>(
-    'time_zone',
-    'shifts',
-  )
-  if (!row) return { timeZone: fallbackTimeZone, shifts: [...DEFAULT_SHIFTS] }
-  return { timeZone: row.time_zone, shifts: z.array(Shift).parse(fromJson(row.shifts)) }
+/** Name for screens and the clock of the workshop, from its settings or, before there are any, from the defaults. */
+export async function findWorkshop(
+  knex: Knex,
+  fallbackTimeZone: string,
+): Promise<WorkshopClock & { name: string }> {
+  const row = await knex('workshop_settings').first<RawWorkshop | undefined>('name', 'time_zone', 'shifts')
+  if (!row) return { name: 'Workshop', timeZone: fallbackTimeZone, shifts: [...DEFAULT_SHIFTS] }
+  return { name: row.name, timeZone: row.time_zone, shifts: z.array(Shift).parse(fromJson(row.shifts)) }
 }

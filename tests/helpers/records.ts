@@ -1,6 +1,7 @@
 import { randomBytes, randomUUID } from 'node:crypto'
 import type { Knex } from 'knex'
 import type { Verdict } from '../../src/shared/contract/measured.ts'
+import type { ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
 import { foldedSerial } from '../../server/instruments/foldedSerial.ts'
 
 /** Records as plain as they can be, for tests of lists and look-ups. */
@@ -25,6 +26,24 @@ export async function addModel(
   return id
 }
 
+function plainSheet(id: string, modelId: string, revision: number): ThresholdSheet {
+  return {
+    id,
+    modelId,
+    label: `S-${id.slice(0, 8)}`,
+    revision,
+    plucks: { n: 3, nMax: 6, largestSDb: 1.5 },
+    guard: { on: false, balanceU: 0, levelU: 0 },
+    noiseStretchMs: 2000,
+    wiggleMs: 5000,
+    patternDb: null,
+    patternUDb: 0,
+    patternInstruments: 0,
+    referenceLevelDb: -20,
+    rules: [{ rule: 'speaks', low: null, high: null, onOutside: 'reject', required: true }],
+  }
+}
+
 export async function addRevision(
   knex: Knex,
   modelId: string,
@@ -38,7 +57,7 @@ export async function addRevision(
     label: `S-${id.slice(0, 8)}`,
     status: revision.status,
     in_force_from: revision.inForceFrom,
-    sheet: JSON.stringify({}),
+    sheet: JSON.stringify(plainSheet(id, modelId, revision.no)),
     created_at: new Date('2026-01-01T00:00:00Z'),
   })
   return id

@@ -123,6 +123,20 @@ describe('POST /auth/refresh', () => {
     await request(test.app).post(`${API}/auth/refresh`).expect(401)
   })
 
+  it('forgets spent tokens a day after their session has ended, and not before', async () => {
+    const { refreshToken, sessionId } = await firstToken()
+    await test.sessions.end({ sessionId }, 'signedOut', () => Promise.resolve())
+    const left = () => test.knex('session_tokens').where({ session_id: sessionId })
+    test.clock.advance(86_400_000)
+    await refresh(refreshToken).expect(401)
+    expect(await left()).toHaveLength(1)
+    test.clock.advance(2 * 3_600_000)
+    const other = await firstToken()
+    await refresh(other.refreshToken).expect(200)
+    expect(await left()).toEqual([])
+    expect(await test.knex('session_tokens').where({ session_id: other.sessionId })).toHaveLength(2)
+  })
+
   it('refuses someone who was deactivated meanwhile', async () => {
     const { refreshToken, sessionId } = await firstToken()
     const session = await test.knex('sessions').where({ id: sessionId }).first()

@@ -37,6 +37,7 @@ describe('POST /auth/sign-in', () => {
     expect(signedIn.person).toMatchObject({ id: person.id, name: person.name, roles: ['installer', 'qc'] })
     expect(signedIn.person.permissions).toContain('returnsDecide')
     expect(signedIn.person.permissions).not.toContain('administer')
+    expect(signedIn.workshop).toEqual({ name: 'Workshop', timeZone: 'UTC' })
     expect(signedIn.tokenUntil).toBe(new Date(test.clock.now().getTime() + 10 * 60_000).toISOString())
   })
 

@@ -77,6 +77,15 @@ describe('GET /instruments', () => {
     expect(serials(await list('search=hl24'))).toHaveLength(9)
   })
 
+  it('finds a part of the model’s name, page by page', async () => {
+    expect(serials(await list('search=larch'))).toHaveLength(10)
+    expect(serials(await list('search=oak'))).toEqual([])
+    const first = await list('search=concert&limit=6')
+    const second = await list(`search=concert&limit=6&after=${encodeURIComponent(first.next)}`)
+    expect(new Set([...serials(first), ...serials(second)]).size).toBe(10)
+    expect(serials(second)).toHaveLength(4)
+  })
+
   it('finds nothing for signs that are in no serial, and takes none of them as a wildcard', async () => {
     expect(serials(await list(`search=${encodeURIComponent('%')}`))).toEqual([])
     expect(serials(await list(`search=${encodeURIComponent('_')}`))).toEqual([])

@@ -33,6 +33,8 @@ describe('GET /models', () => {
     const models = await list()
     expect(models.map(({ id }) => id)).toEqual([a, b])
     expect(models[0]!.sheetInForce).toBeNull()
+    expect(models[0]!.sheet).toBeNull()
+    expect(models[1]!.sheet).toMatchObject({ id: current, revision: 3, modelId: b })
     expect(models[1]!.sheetInForce).toMatchObject({
       id: current,
       revision: 3,
