@@ -81,7 +81,7 @@ export function makeModelledBench(options: ModelledBenchOptions): ModelledBench 
     for (const stringNo of waitingPlucks) {
       const into = Math.floor(random.pluck.uniform() * frameMs * 10) / (frameMs * 10)
       const force = {
-        power: Math.pow(10, (options.scatterDb * random.pluck.normal()) / 10),
+        power: Math.pow(10, (options.scatterDb * random.pluck.normalWithin(3)) / 10),
         attackPower: Math.pow(10, (ATTACK_SCATTER_DB * random.pluck.normal()) / 10),
       }
       voices[stringNo - 1] = makeVoice(parts.strings[stringNo - 1]!, force, frameS, into)

@@ -1,4 +1,5 @@
 import { describe, expect, it } from 'vitest'
+import type { FrameMs } from '../../../src/shared/contract/frames.ts'
 import type { Capability } from '../../../src/shared/contract/rules.ts'
 import type { MeasuredRun, Pluck } from '../../../src/shared/contract/measured.ts'
 import { STRING_NOS } from '../../../src/shared/contract/quantities.ts'
@@ -11,8 +12,8 @@ import { buildRecordingSetup, sheetRule } from '../../helpers/runSetup.ts'
 const proof = recordings()
 
 /** A recording through the WAV source and the run's state, as the server does it, without server and database. */
-function measure(kind: RecordingKind): MeasuredRun {
-  const source = new WavSource(proof.file[kind])
+function measure(kind: RecordingKind, frameMs: FrameMs = 10): MeasuredRun {
+  const source = new WavSource(proof.file[kind], { frameMs })
   const rules = [
     sheetRule('speaks'),
     ...(['balance', 'range', 'step', 'noiseFlat', 'noiseA', 'snFlat'] as const).map((rule) =>
@@ -23,6 +24,7 @@ function measure(kind: RecordingKind): MeasuredRun {
     ...buildRecordingSetup(source.channelKind, { rules, patternDb: null, patternInstruments: 0 }),
     capabilities: [...source.capabilities] as Capability[],
     algorithms: source.algorithms,
+    frameMs,
   }
   const state = startRun(setup)
   source.start(RECORDING_ORDER)
@@ -41,10 +43,11 @@ const resultOf = (run: MeasuredRun, stringNo: number) =>
   run.results.find((result) => result.rule === 'speaks' && result.stringNo === stringNo)
 
 describe.each([
-  ['sixChannels', 6],
-  ['oneChannel', 1],
-] as const)('the recording %s, measured', (kind, channels) => {
-  const run = measure(kind)
+  ['sixChannels', 6, 10],
+  ['oneChannel', 1, 10],
+  ['oneChannel', 1, 5],
+] as const)('the recording %s on %i channels in frames of %i ms, measured', (kind, channels, frameMs) => {
+  const run = measure(kind, frameMs)
 
   it('names every string by its pitch, keeps all 18 plucks and passes', () => {
     expect(run.plucks.map(({ stringNo, toldBy, dropped }) => ({ stringNo, toldBy, dropped }))).toEqual(
