@@ -24,7 +24,7 @@ export function noiseRows(measured: MeasuredRun, level: LevelUnit, all: boolean)
   const { noise, snA, snFlat } = measured
   const sn =
     snA.value !== null || snFlat.value === null
-      ? { name: 'S/N (A), worst', value: formatReading(snA), isOutside: isOutside(measured, 'snA') }
+      ? { name: 'S/N A, worst', value: formatReading(snA), isOutside: isOutside(measured, 'snA') }
       : { name: 'S/N, worst', value: formatReading(snFlat), isOutside: isOutside(measured, 'snFlat') }
   const flat = {
     name: 'broadband',
