@@ -92,7 +92,7 @@ export const ROUTES = {
     summary: 'Exchange the refresh cookie for a new one',
     answer: SignedIn,
     status: 200,
-    errors: ['sign-in.reused'],
+    errors: ['sign-in.required', 'sign-in.reused'],
   }),
   'auth.signOut': contract({
     method: 'post',

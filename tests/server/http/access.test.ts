@@ -96,7 +96,16 @@ describe('routes that the test above leaves to others', () => {
     expect(ROUTES['auth.signIn'].access).toBe('public')
   })
 
-  it('cannot be told apart from one that exists by someone who is not signed in', async () => {
+  it('refuses a sign-in from another site too', async () => {
+    const response = await request(test.app)
+      .post(addressOf('auth.signIn'))
+      .set('Origin', 'https://elsewhere.example')
+      .send({ email: 'a', password: 'b' })
+      .expect(403)
+    expect(Problem.parse(response.body).code).toBe('request.origin')
+  })
+
+  it('answers an address that no route has with route.unknown', async () => {
     const response = await request(test.app).get(`${API}/nothing-here`).expect(404)
     expect(Problem.parse(response.body).code).toBe('route.unknown')
   })
