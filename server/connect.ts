@@ -19,7 +19,13 @@ export function connect(databaseUrl: string, connections = 10): Knex {
     },
     pool: { min: 0, max: connections, acquireTimeoutMillis: 4000, idleTimeoutMillis: 30_000 },
     acquireConnectionTimeout: 4000,
+    // What goes wrong is thrown to whoever asked and logged there; knex would print it a second time.
+    log: { warn: quiet, error: quiet, debug: quiet, deprecate: quiet },
   })
+}
+
+function quiet(): void {
+  // see above
 }
 
 const AWAY = new Set([

@@ -1,8 +1,11 @@
 import { randomUUID } from 'node:crypto'
 import type { Knex } from 'knex'
 import { z } from 'zod'
-import { Model, StringPitch, ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
+import { ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
 import { AppError } from '../errors.ts'
+import type { Model } from '../../src/shared/contract/thresholds.ts'
+import { modelOf } from '../models/models.queries.ts'
+import type { RawModel } from '../models/models.queries.ts'
 import { foldedSerial } from '../instruments/foldedSerial.ts'
 import { fromJson } from './runs.queries.ts'
 
@@ -46,32 +49,6 @@ export async function findBenchSetup(knex: Knex, benchId: string, at: Date): Pro
   }
 }
 
-interface RawModel {
-  id: string
-  key: string
-  name: string
-  strings: string
-  handedness: string
-  circuit: string
-  jack_kind: string
-  tuning: unknown
-  is_recording: number
-}
-
-function toModel(raw: RawModel): Model {
-  return Model.parse({
-    id: raw.id,
-    key: raw.key,
-    name: raw.name,
-    strings: raw.strings,
-    handedness: raw.handedness,
-    circuit: raw.circuit,
-    jackKind: raw.jack_kind,
-    tuning: z.array(StringPitch).parse(fromJson(raw.tuning)),
-    isRecording: Boolean(raw.is_recording),
-  })
-}
-
 /** The model of a known serial, or for a new one the model that was chosen. */
 export async function findStartModel(knex: Knex, serial: string, modelId: string | null): Promise<Model> {
   const known = (await knex('instruments')
@@ -81,12 +58,12 @@ export async function findStartModel(knex: Knex, serial: string, modelId: string
   if (known) {
     if (modelId && modelId !== known.id)
       throw new AppError('instrument.model-differs', { facts: { model: known.name } })
-    return toModel(known)
+    return modelOf(known)
   }
   if (!modelId) throw new AppError('instrument.unknown', { facts: { serial } })
   const chosen = (await knex('models').where({ id: modelId }).first()) as RawModel | undefined
   if (!chosen) throw new AppError('model.unknown')
-  return toModel(chosen)
+  return modelOf(chosen)
 }
 
 /** The revision in force at that moment; it judges the run, whatever is approved meanwhile. */
