@@ -222,9 +222,10 @@ export function createHttp(deps: HttpDeps): Http {
   }
 }
 
+type Plain = string | number | boolean | null | undefined
 interface AnyParts {
-  params?: Record<string, unknown>
-  query?: Record<string, unknown>
+  params?: Record<string, Plain>
+  query?: Record<string, Plain>
   body?: unknown
 }
 
@@ -279,7 +280,7 @@ function storageOf(): Storage | undefined {
 export const http = createHttp({
   fetch: (url, init) => globalThis.fetch(url, init),
   now: () => Date.now(),
-  locks: globalThis.navigator?.locks as Locks | undefined,
+  locks: globalThis.navigator?.locks,
   channel: typeof BroadcastChannel === 'undefined' ? undefined : new BroadcastChannel('evenstrung'),
   storage: storageOf(),
 })

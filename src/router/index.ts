@@ -2,6 +2,7 @@ import { createRouter, createWebHistory } from 'vue-router'
 import type { RouteRecordRaw, RouterHistory } from 'vue-router'
 import type { Permission } from '../shared/contract/permissions.ts'
 import { useSessionStore } from '../stores/session.ts'
+import { startPlace } from './startPlace.ts'
 
 declare module 'vue-router' {
   interface RouteMeta {
@@ -60,16 +61,6 @@ export const ROUTE_TABLE: RouteRecordRaw[] = [
     meta: { title: 'Not found' },
   },
 ]
-
-/** Where to go after signing in: only a path of this application, never another site's address. */
-export function safeNext(next: unknown): string {
-  return typeof next === 'string' && /^\/(?![/\\])/.test(next) && !next.startsWith('/sign-in') ? next : '/'
-}
-
-/** The section that a person's work begins with. */
-export function startPlace(): { name: 'check' | 'instruments'; replace: true } {
-  return { name: useSessionStore().may('runChecks') ? 'check' : 'instruments', replace: true }
-}
 
 export function makeRouter(history: RouterHistory = createWebHistory()) {
   const router = createRouter({

@@ -1,4 +1,4 @@
-import { z } from 'zod'
+import type { z } from 'zod'
 
 /** Keeps a small value on this terminal. What was kept by another version and no longer fits is left out. */
 export function readKept<T>(key: string, schema: z.ZodType<T>): T | null {
