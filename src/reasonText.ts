@@ -56,7 +56,12 @@ function sentence(result: RuleResult, view: RunView, level: LevelUnit): string {
   const subject = which
     ? `${upperFirst(which)}: ${ruleName(result.rule).toLowerCase()}`
     : ruleName(result.rule)
-  if (result.result !== 'outside') return `${subject} ${result.why ? WHYS[result.why] : 'has no result'}`
+  if (result.result !== 'outside') {
+    const what = which
+      ? `${upperFirst(which)}, ${ruleName(result.rule).toLowerCase()}`
+      : ruleName(result.rule)
+    return `${what}: ${result.why ? WHYS[result.why] : 'no result'}`
+  }
   if (result.rule === 'speaks') return `${upperFirst(which ?? 'a string')} gives no signal`
   const state = STATE_SENTENCES[result.rule]
   if (state) return state

@@ -65,6 +65,8 @@ function pressesByItself(target: EventTarget | null): boolean {
 export function useBenchKeys(
   actions: BenchKeyActions,
   target: EventTarget = window,
+  /** when the key went down: the event's own time, so that a busy page does not tear a scan apart */
+  timeOf: (event: KeyboardEvent) => number = (event) => event.timeStamp,
 ): { holdProgress: Ref<number> } {
   const holdProgress = ref(0)
   let pending: ReturnType<typeof setTimeout> | undefined
@@ -104,7 +106,7 @@ export function useBenchKeys(
 
   const onKeyDown = (event: Event) => {
     if (!(event instanceof KeyboardEvent)) return
-    const at = performance.now()
+    const at = timeOf(event)
     const isOnItsOwn = at - lastKeyAt >= QUIET_MS
     dropPending()
     if (MODIFIERS.has(event.key)) {

@@ -54,14 +54,15 @@ beforeEach(() => {
   enabled = ref(true)
   scope = effectScope()
   scope.run(() => {
-    holdProgress = useBenchKeys({
+    const actions = {
       goOn: () => calls.push('goOn'),
       repeat: () => calls.push('repeat'),
       stop: () => calls.push('stop'),
       cancel: () => calls.push('cancel'),
       digit: (digit) => calls.push(`digit ${digit}`),
       enabled,
-    }).holdProgress
+    }
+    holdProgress = useBenchKeys(actions, window, () => performance.now()).holdProgress
   })
   quiet()
 })
