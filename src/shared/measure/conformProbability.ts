@@ -1,10 +1,11 @@
 import jStat from 'jstat'
+import { tProbability } from './tProbability.ts'
 
 /** Probability that a t (dof null: normal) variable is at most z. */
 function probabilityBelow(z: number, dof: number | null): number {
   if (z === Infinity) return 1
   if (z === -Infinity) return 0
-  return dof === null ? jStat.normal.cdf(z, 0, 1) : jStat.studentt.cdf(z, dof)
+  return dof === null ? jStat.normal.cdf(z, 0, 1) : tProbability(z, dof)
 }
 
 /**

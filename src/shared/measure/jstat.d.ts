@@ -5,6 +5,7 @@ declare module 'jstat' {
     inv(p: number, ...parameters: P): number
   }
   const jStat: {
+    gammaln(x: number): number
     normal: Continuous<[mean: number, sd: number]>
     studentt: Continuous<[dof: number]>
   }

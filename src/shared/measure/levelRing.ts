@@ -80,7 +80,7 @@ export function medianMdb(ring: LevelRing, channel: number, from: number, to: nu
 
 /**
  * Whether that median is at most `limit`, told by counting, which is what every frame of every channel can afford.
- * False when fewer than `least` frames are measured.
+ * null when fewer than `least` frames are measured.
  */
 export function medianAtMost(
   ring: LevelRing,
@@ -89,7 +89,7 @@ export function medianAtMost(
   to: number,
   least: number,
   limit: number,
-): boolean {
+): boolean | null {
   const { flat } = ring
   const base = channel * KEPT
   let measured = 0
@@ -100,7 +100,7 @@ export function medianAtMost(
     measured++
     if (value <= limit) below++
   }
-  if (measured === 0 || measured < least) return false
+  if (measured === 0 || measured < least) return null
   if (2 * below !== measured) return 2 * below > measured
   return medianMdb(ring, channel, from, to, least) <= limit
 }

@@ -26,7 +26,11 @@ export interface OnsetWatch {
   rawFloorMdb: readonly number[]
   /** channels that stand above, a bit for each */
   above: number
+  /** channels that must be seen not to stand above before they can have an onset, a bit for each */
+  unarmed: number
 }
+
+const EVERY_CHANNEL = 0b111111
 
 export function createOnsetWatch(frameMs: number, rawFloorMdb: readonly number[]): OnsetWatch {
   const floorFrom = OWN_FLOOR_FROM_MS / frameMs
@@ -40,25 +44,42 @@ export function createOnsetWatch(frameMs: number, rawFloorMdb: readonly number[]
     recentFrom: RISE_RECENT_FROM_MS / frameMs,
     rawFloorMdb,
     above: 0,
+    unarmed: EVERY_CHANNEL,
   }
+}
+
+/** What stands above now is no onset: it began while nobody looked. */
+export function disarmOnsets(watch: OnsetWatch): void {
+  watch.above = 0
+  watch.unarmed = EVERY_CHANNEL
 }
 
 /**
  * Channels whose onset is this frame, a bit for each: they stand 10 dB above their own floor (the median of their
- * frames 200 to 40 ms earlier, not below the bench's noise floor) and did not in the frame before.
+ * frames 200 to 40 ms earlier, not below the bench's noise floor) and did not in the frame before. Where the floor is
+ * not known, or the frame not measured, nothing is told and the next frame is no onset either.
  */
 export function onsetsAt(watch: OnsetWatch, ring: LevelRing, frameNo: number): number {
   let above = 0
+  let onsets = 0
   const from = frameNo - watch.floorFrom
   const to = frameNo - watch.floorTo
   for (let channel = 0; channel < ring.channels; channel++) {
+    const bit = 1 << channel
     const level = levelAt(ring, channel, frameNo)
-    if (level === NOT_MEASURED_MDB) continue
     const limit = level - ONSET_RISE_DB * 1000
-    if (watch.rawFloorMdb[channel]! > limit) continue
-    if (medianAtMost(ring, channel, from, to, watch.floorLeast, limit)) above |= 1 << channel
+    const stands =
+      level === NOT_MEASURED_MDB
+        ? null
+        : watch.rawFloorMdb[channel]! <= limit &&
+          medianAtMost(ring, channel, from, to, watch.floorLeast, limit)
+    if (stands === null) {
+      watch.unarmed |= bit
+    } else if (stands) {
+      above |= bit
+      if (((watch.above | watch.unarmed) & bit) === 0) onsets |= bit
+    } else watch.unarmed &= ~bit
   }
-  const onsets = above & ~watch.above
   watch.above = above
   return onsets
 }
@@ -84,7 +105,7 @@ export function risesAt(watch: OnsetWatch, ring: LevelRing, channel: number, fra
   const before = levelAt(ring, channel, frameNo - 1)
   if (level === NOT_MEASURED_MDB || before === NOT_MEASURED_MDB) return false
   const limit = Math.min(level, before) - RISE_DB * 1000
-  return medianAtMost(ring, channel, frameNo - watch.riseFrom, frameNo - watch.riseTo, 2, limit)
+  return medianAtMost(ring, channel, frameNo - watch.riseFrom, frameNo - watch.riseTo, 2, limit) === true
 }
 
 /**

@@ -32,7 +32,7 @@ import { decideRun, stringsInGuardBand } from './judgeRun.ts'
 import { forgetLevels, meanPowerIn, pushFrame } from './levelRing.ts'
 import { dbOfPower } from './meanPowerDb.ts'
 import { hasWindow, isQuiet, latestSums, restartNoiseStretch, takeNoiseFrame } from './noiseStretch.ts'
-import { onsetsAt } from './onsetWatch.ts'
+import { disarmOnsets, onsetsAt } from './onsetWatch.ts'
 import { forgetPitches, logPitch } from './pitchLog.ts'
 import { endPlucks, interruptPluck, takeNoSignal, watchPlucks } from './plucks.ts'
 import { rulesToEnter } from './runPlan.ts'
@@ -167,7 +167,7 @@ function foldEvent(state: RunState, event: Exclude<BenchEvent, { kind: 'endOfSou
 function breakOff(state: RunState): void {
   forgetLevels(state.ring)
   forgetPitches(state.pitches)
-  state.onsets.above = 0
+  disarmOnsets(state.onsets)
   interruptPluck(state, 'interrupted')
   switch (state.phase) {
     case 'unplugged':
@@ -381,9 +381,9 @@ export function sayNoSignal(state: RunState, tally: StringTally): void {
 
 /** Takes the run back to its strings, for a repeat. */
 export function backToStrings(state: RunState): void {
-  if (state.phase !== 'strings') enterPhase(state, 'strings')
-  state.onsets.above = 0
-  state.changes++
+  if (state.phase === 'strings') return
+  enterPhase(state, 'strings')
+  disarmOnsets(state.onsets)
 }
 
 /** 0..1 of the present phase where it has a length, else null. */

@@ -8,6 +8,7 @@ import {
   LEAD_DB,
   PITCH_CHANNEL_WITHIN_DB,
   RINGING_DB,
+  RISE_FROM_MS,
   SECOND_ONSET_FROM_MS,
   SECOND_ONSET_WITHIN_DB,
   WINDOW_FROM_MS,
@@ -29,12 +30,16 @@ export function watchPlucks(state: RunState, frameNo: number): void {
   if (state.pluck !== null) {
     const elapsedMs = (frameNo - state.pluck.onsetFrame) * setup.frameMs
     if (elapsedMs < WINDOW_TO_MS) {
-      if (elapsedMs >= SECOND_ONSET_FROM_MS && risesWithinWindow(state, frameNo))
-        state.pluck.secondOnset = true
+      if (elapsedMs >= SECOND_ONSET_FROM_MS && risesWithinWindow(state, frameNo)) {
+        state.pluck.secondOnsetFrame = frameNo
+      }
       return
     }
   }
-  const onRinging = !onset && repluckedAt(onsets, ring, frameNo, state.mutedFloorMdb) !== 0
+  // a second onset near the end of the window still rises after it: it is dropped with its pluck, not counted again
+  const sinceSecondMs = (frameNo - (state.pluck?.secondOnsetFrame ?? -Infinity)) * setup.frameMs
+  const onRinging =
+    !onset && sinceSecondMs >= RISE_FROM_MS && repluckedAt(onsets, ring, frameNo, state.mutedFloorMdb) !== 0
   if (state.pluck !== null) {
     const elapsedMs = (frameNo + 1 - state.pluck.onsetFrame) * setup.frameMs
     if (!onset && !onRinging && elapsedMs < DECIDE_AFTER_MS) return
@@ -50,7 +55,7 @@ function beginPluck(state: RunState, onsetFrame: number, onRinging: boolean): vo
   state.pluck = {
     onsetFrame,
     onRinging,
-    secondOnset: false,
+    secondOnsetFrame: null,
     ownFloorMdb: Array.from({ length: ring.channels }, (_, channel) =>
       ownFloorMdb(onsets, ring, channel, onsetFrame),
     ),
@@ -151,7 +156,7 @@ function decidePluck(state: RunState, underWay: PluckUnderWay): void {
       ? 'stringDone'
       : firstReason([
           ['clipped', clippedIn(state.ring, underWay.onsetFrame, to) > 0],
-          ['secondOnset', underWay.secondOnset],
+          ['secondOnset', underWay.secondOnsetFrame !== null],
           ['wrongPitch', told.dropped === 'wrongPitch'],
           ['notDamped', stillRang],
           ['shortWindow', Number.isNaN(rawDb)],

@@ -17,7 +17,8 @@ export interface PluckUnderWay {
   onsetFrame: number
   /** it is a rise on a string that still rang, not a 10 dB onset */
   onRinging: boolean
-  secondOnset: boolean
+  /** frame in which something was excited again while the window was open */
+  secondOnsetFrame: number | null
   /** each channel's own floor before it, thousandths of a dBV as it came */
   ownFloorMdb: number[]
 }
