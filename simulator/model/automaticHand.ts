@@ -36,7 +36,19 @@ const LOOK_S = 0.45
 const WIGGLE_S = 7.3
 const ENTRY_PATIENCE_S = 2
 
+const SETTLE_S = 5
+
 const PLUCK_PROMPTS: readonly PromptKey[] = ['dampThenPluck', 'pluckAgain', 'pluckMore']
+/** A plug that fell out, or a bench that was restarted: a person puts it back in first. */
+const NEEDS_PLUG: readonly PromptKey[] = [
+  ...PLUCK_PROMPTS,
+  'waitSettle',
+  'holdStill',
+  'muteAll',
+  'keepMuted',
+  'getReadyToWiggle',
+  'wiggleNow',
+]
 
 /**
  * A hand that follows the prompts at human pace: unplugs, plugs in, mutes, damps and plucks the string that is asked
@@ -69,6 +81,10 @@ export function makeAutomaticHand(seed: number, frameMs: number): AutomaticHand 
   }
 
   function planFor(prompt: PromptKey, stringNo: number | null, sight: HandSight): void {
+    if (!sight.plugged && NEEDS_PLUG.includes(prompt)) {
+      then([REACT_S + 0.3, { kind: 'plug' }], [SETTLE_S, null])
+      return
+    }
     if (PLUCK_PROMPTS.includes(prompt)) {
       if (stringNo === null) return
       muted = false

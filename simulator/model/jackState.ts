@@ -7,6 +7,11 @@ import type { Random } from './random.ts'
 const WIGGLE_S = 7
 /** Extra sag of a battery that was just loaded, as resistance, and how fast it comes, s. */
 const POLARISATION_TAU_S = 5
+/** Fall of the open voltage over the whole charge, V. */
+const EMPTIES_BY_V = 2
+/** What an open switch and its wiring leak, ohm. */
+const OPEN_SWITCH_OHM = 200e6
+const MOST_BREAK_S = 0.04
 
 /** What jack, switch and supply do during one frame. */
 export interface JackFrame {
@@ -28,16 +33,6 @@ export interface JackFrame {
   pluggedFrames: number
 }
 
-export interface JackModel {
-  plug(): void
-  unplug(): void
-  wiggle(): void
-  isPlugged(): boolean
-  step(frameNo: number, events: BenchEvent[]): JackFrame
-  /** A run begins: what began in another run's time is forgotten. */
-  restart(): void
-}
-
 interface Break {
   pole: Pole
   startTenthMs: number
@@ -52,7 +47,7 @@ export function loadedSupply(
 ): { batteryV: number; currentA: number } {
   const { supply, preamp } = parts
   if (!supply.connected) return { batteryV: 0, currentA: 0 }
-  const openV = supply.batteryV - 2 * chargeShareUsed
+  const openV = supply.batteryV - EMPTIES_BY_V * chargeShareUsed
   const leakA = openV / (supply.leakOhm + supply.batteryOhm)
   const currentA = preamp.quiescentA + leakA
   return { batteryV: openV - currentA * supply.batteryOhm, currentA }
@@ -68,42 +63,116 @@ export function clipPeakV(parts: InstrumentParts, supplyV: number): number {
   return Math.max(0, supplyV / 2 - parts.preamp.railDropV) * parts.preamp.volume
 }
 
-export function makeJackModel(parts: InstrumentParts, frameS: number, random: Random): JackModel {
-  let plugged = false
-  let pluggedFrames = 0
-  let wiggleFrames = 0
-  let thumpPower = 0
-  let usedAs = 0
-  let sag = 0
-  let breaks: Break[] = []
-  const thumpStep = Math.exp((-2 * frameS) / parts.jack.thumpTauS)
-  const sagStep = 1 - Math.exp(-frameS / POLARISATION_TAU_S)
-  const frameTenthMs = Math.round(frameS * 10_000)
+/** Plug, contacts, switch and supply, moved on by one frame at a time. */
+export class JackModel {
+  private readonly parts: InstrumentParts
+  private readonly frameS: number
+  private readonly random: Random
+  private plugged = false
+  private pluggedFrames = 0
+  private wiggleFrames = 0
+  private thumpPower = 0
+  private usedAs = 0
+  private sagV = 0
+  private breaks: Break[] = []
 
-  function startBreaks(frameNo: number): void {
-    const rate = parts.jack.breaksPerSecond
-    if (!(rate > 0)) return
-    let atS = random.exponential(1 / rate)
-    while (atS < frameS) {
-      const lengthS = Math.min(0.04, Math.max(0.0001, parts.jack.breakS * Math.exp(0.9 * random.normal())))
-      breaks.push({
-        pole: POLES[Math.floor(random.uniform() * 3)]!,
-        startTenthMs: frameNo * frameTenthMs + Math.floor(atS * 10_000),
-        durationTenthMs: Math.max(1, Math.round(lengthS * 10_000)),
-        restS: lengthS,
-      })
-      atS += random.exponential(1 / rate)
+  constructor(parts: InstrumentParts, frameS: number, random: Random) {
+    this.parts = parts
+    this.frameS = frameS
+    this.random = random
+  }
+
+  plug(): void {
+    if (this.plugged) return
+    this.plugged = true
+    this.pluggedFrames = 0
+    this.thumpPower = this.parts.jack.thumpV ** 2
+  }
+
+  unplug(): void {
+    this.plugged = false
+    this.pluggedFrames = 0
+    this.thumpPower = 0
+    this.restart()
+  }
+
+  wiggle(): void {
+    if (this.plugged) this.wiggleFrames = Math.round(WIGGLE_S / this.frameS)
+  }
+
+  isPlugged(): boolean {
+    return this.plugged
+  }
+
+  /** A run begins: what was under way in another run's time is forgotten. */
+  restart(): void {
+    this.breaks = []
+    this.wiggleFrames = 0
+  }
+
+  /** One frame; breaks of a contact that end in it are told as events. */
+  step(frameNo: number, events: BenchEvent[]): JackFrame {
+    const { parts, plugged } = this
+    const wiggling = this.wiggleFrames > 0
+    if (wiggling) {
+      this.startBreaks(frameNo)
+      this.wiggleFrames -= 1
+    }
+    if (plugged) this.pluggedFrames += 1
+    const lost = this.lostShares(frameNo, events)
+    const contact = switchCloses(parts, plugged)
+    const supply = this.supply(contact)
+    const broken = parts.jack.switchState === 'stuckClosed' ? 0 : Math.max(lost.ring, lost.sleeve)
+    return {
+      plugged,
+      ringSleeveClosed: contact && broken < 0.5,
+      tipClosed: plugged ? !parts.jack.tipOpen && lost.tip < 0.5 : null,
+      // a capacitor behind the switch bridges a short break of the ring
+      powered: contact && supply.supplyV >= parts.preamp.leastSupplyV,
+      signalLost: parts.jack.tipOpen || !plugged ? 1 : Math.max(lost.tip, lost.sleeve),
+      wiggling,
+      supplyV: supply.supplyV,
+      batteryV: supply.batteryV,
+      currentA: supply.currentA * (1 - broken),
+      thumpPower: this.thump(),
+      pluggedFrames: this.pluggedFrames,
     }
   }
 
-  /** Share of this frame in which each pole is broken; breaks that end here are told. */
-  function lostShares(frameNo: number, events: BenchEvent[]): Record<Pole, number> {
+  private thump(): number {
+    const now = this.thumpPower
+    const step = Math.exp((-2 * this.frameS) / this.parts.jack.thumpTauS)
+    this.thumpPower = now < 1e-20 ? 0 : now * step
+    return now
+  }
+
+  private startBreaks(frameNo: number): void {
+    const { breaksPerSecond, breakS } = this.parts.jack
+    if (!(breaksPerSecond > 0)) return
+    const { random, frameS } = this
+    for (
+      let atS = random.exponential(1 / breaksPerSecond);
+      atS < frameS;
+      atS += random.exponential(1 / breaksPerSecond)
+    ) {
+      const lengthS = Math.min(MOST_BREAK_S, Math.max(0.0001, breakS * Math.exp(0.9 * random.normal())))
+      this.breaks.push({
+        pole: POLES[Math.floor(random.uniform() * POLES.length)]!,
+        startTenthMs: Math.floor((frameNo * frameS + atS) * 10_000),
+        durationTenthMs: Math.max(1, Math.round(lengthS * 10_000)),
+        restS: lengthS,
+      })
+    }
+  }
+
+  /** Share of this frame in which each pole is broken. */
+  private lostShares(frameNo: number, events: BenchEvent[]): Record<Pole, number> {
     const lost: Record<Pole, number> = { tip: 0, ring: 0, sleeve: 0 }
-    if (breaks.length === 0) return lost
+    if (this.breaks.length === 0) return lost
     const left: Break[] = []
-    for (const each of breaks) {
-      const inFrameS = Math.min(each.restS, frameS)
-      lost[each.pole] = Math.min(1, lost[each.pole] + inFrameS / frameS)
+    for (const each of this.breaks) {
+      const inFrameS = Math.min(each.restS, this.frameS)
+      lost[each.pole] = Math.min(1, lost[each.pole] + inFrameS / this.frameS)
       each.restS -= inFrameS
       if (each.restS > 1e-9) {
         left.push(each)
@@ -112,77 +181,24 @@ export function makeJackModel(parts: InstrumentParts, frameS: number, random: Ra
       const { pole, startTenthMs, durationTenthMs } = each
       events.push({ kind: 'disturbance', frame: frameNo, startTenthMs, durationTenthMs, pole })
     }
-    breaks = left
+    this.breaks = left
     return lost
   }
 
-  function supplyNow(closed: boolean): { batteryV: number; currentA: number; supplyV: number } {
-    const { supply } = parts
+  private supply(closed: boolean): { batteryV: number; currentA: number; supplyV: number } {
+    const { supply } = this.parts
     if (!supply.connected) return { batteryV: 0, currentA: 0, supplyV: 0 }
-    const used = Math.min(1, usedAs / supply.chargeAs)
+    const used = Math.min(1, this.usedAs / supply.chargeAs)
+    const sagStep = 1 - Math.exp(-this.frameS / POLARISATION_TAU_S)
     if (!closed) {
-      sag *= 1 - sagStep
-      const openV = supply.batteryV - 2 * used - sag
-      return { batteryV: openV, currentA: openV / 200e6, supplyV: 0 }
+      this.sagV *= 1 - sagStep
+      const batteryV = supply.batteryV - EMPTIES_BY_V * used - this.sagV
+      return { batteryV, currentA: batteryV / OPEN_SWITCH_OHM, supplyV: 0 }
     }
-    const loaded = loadedSupply(parts, used)
-    sag += (loaded.currentA * supply.batteryOhm * 2 - sag) * sagStep
-    usedAs += loaded.currentA * frameS
-    const batteryV = Math.max(0, loaded.batteryV - sag)
+    const loaded = loadedSupply(this.parts, used)
+    this.sagV += (loaded.currentA * supply.batteryOhm * 2 - this.sagV) * sagStep
+    this.usedAs += loaded.currentA * this.frameS
+    const batteryV = Math.max(0, loaded.batteryV - this.sagV)
     return { batteryV, currentA: loaded.currentA, supplyV: batteryV }
-  }
-
-  return {
-    plug() {
-      if (plugged) return
-      plugged = true
-      pluggedFrames = 0
-      thumpPower = parts.jack.thumpV ** 2
-    },
-    unplug() {
-      plugged = false
-      pluggedFrames = 0
-      wiggleFrames = 0
-      thumpPower = 0
-      breaks = []
-    },
-    wiggle() {
-      if (plugged) wiggleFrames = Math.round(WIGGLE_S / frameS)
-    },
-    isPlugged: () => plugged,
-    restart() {
-      breaks = []
-      wiggleFrames = 0
-    },
-    step(frameNo, events) {
-      const wiggling = wiggleFrames > 0
-      if (wiggling) {
-        startBreaks(frameNo)
-        wiggleFrames -= 1
-      }
-      if (plugged) pluggedFrames += 1
-      const lost = lostShares(frameNo, events)
-      const tipClosed = plugged ? !parts.jack.tipOpen && lost.tip < 0.5 : null
-      const contact = switchCloses(parts, plugged)
-      const supply = supplyNow(contact)
-      // a capacitor behind the switch bridges a short break of the ring
-      const powered = contact && supply.supplyV >= parts.preamp.leastSupplyV
-      const broken = parts.jack.switchState === 'stuckClosed' ? 0 : Math.max(lost.ring, lost.sleeve)
-      const thump = thumpPower
-      thumpPower = thumpPower < 1e-20 ? 0 : thumpPower * thumpStep
-      return {
-        plugged,
-        ringSleeveClosed: contact && broken < 0.5,
-        tipClosed,
-        powered,
-        signalLost: parts.jack.tipOpen || !plugged ? 1 : Math.max(lost.tip, lost.sleeve),
-        wiggling,
-        supplyV: supply.supplyV,
-        batteryV: supply.batteryV,
-        currentA: supply.currentA * (1 - broken),
-        thumpPower: thump,
-        pluggedFrames,
-      }
-    },
   }
 }

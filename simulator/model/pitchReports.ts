@@ -7,73 +7,81 @@ import type { Random } from './random.ts'
 const REPORT_AFTER_MS = 200
 const STRETCH_FROM_MS = 70
 const STRETCH_MS = 120
-/** A string stands out when it is so much louder than the noise, or not so much softer than another string. */
+/** A string stands out when its power is so much above the noise: 10 dB. */
 const LEAST_RATIO = 10
-const OTHER_RATIO = 16
+/** Another string so much louder drowns it, 12 dB: then that one's pitch is heard. */
+const DROWNED_RATIO = 16
 /** Standard deviation of a pitch: about a cent. */
 const PITCH_SPREAD = 0.0006
 
-export interface PitchReports {
-  expect(stringNo: number, frameNo: number, startTenthMs: number): void
-  report(
-    frameNo: number,
-    events: BenchEvent[],
-    powerAt: (stringNo: number, point: number) => number,
-    noiseAt: (point: number) => number,
-    tuning: Tuning,
-  ): void
-  restart(): void
+/** What can be heard at this moment. */
+export interface Hearing {
+  powerAt: (stringNo: number, point: number) => number
+  noiseAt: (point: number) => number
+  tuning: Tuning
+}
+
+interface Expected {
+  stringNo: number
+  dueFrame: number
+  startTenthMs: number
 }
 
 /** Tells the pitch of each pluck as a bench would: late, a little off, and only when the string can be heard. */
-export function makePitchReports(channelKind: ChannelKind, frameMs: number, random: Random): PitchReports {
-  let waiting: { stringNo: number; dueFrame: number; startTenthMs: number }[] = []
-  const points = channelKind === 'six' ? [0, 1, 2, 3, 4, 5] : [JACK]
+export class PitchReports {
+  private readonly points: readonly number[]
+  private readonly reportFrames: number
+  private readonly random: Random
+  private waiting: Expected[] = []
 
-  function loudestPoint(powerAt: (point: number) => number): number {
-    return points.reduce((best, point) => (powerAt(point) > powerAt(best) ? point : best), points[0]!)
+  constructor(channelKind: ChannelKind, frameMs: number, random: Random) {
+    this.points = channelKind === 'six' ? [0, 1, 2, 3, 4, 5] : [JACK]
+    this.reportFrames = Math.ceil(REPORT_AFTER_MS / frameMs)
+    this.random = random
   }
 
-  return {
-    expect(stringNo, frameNo, startTenthMs) {
-      waiting = waiting.filter((each) => each.stringNo !== stringNo)
-      waiting.push({ stringNo, dueFrame: frameNo + Math.ceil(REPORT_AFTER_MS / frameMs), startTenthMs })
-    },
-    restart() {
-      waiting = []
-    },
-    report(frameNo, events, powerAt, noiseAt, tuning) {
-      if (waiting.length === 0) return
-      const due = waiting.filter((each) => each.dueFrame <= frameNo)
-      if (due.length === 0) return
-      waiting = waiting.filter((each) => each.dueFrame > frameNo)
-      for (const { stringNo, startTenthMs } of due) {
-        const point = loudestPoint((at) => powerAt(stringNo, at))
-        const own = powerAt(stringNo, point)
-        let heardNo = stringNo
-        let heard = own
-        for (let other = 1; other <= 6; other++) {
-          const power = powerAt(
-            other,
-            loudestPoint((at) => powerAt(other, at)),
-          )
-          if (power > own * OTHER_RATIO && power > heard) {
-            heardNo = other
-            heard = power
-          }
-        }
-        const ratio = heard / noiseAt(point)
-        if (!(ratio >= LEAST_RATIO)) continue
-        events.push({
-          kind: 'pitch',
-          frame: frameNo,
-          startTenthMs: startTenthMs + STRETCH_FROM_MS * 10,
-          durationTenthMs: STRETCH_MS * 10,
-          channel: point === JACK ? 0 : point + 1,
-          milliHz: Math.round(tuning[heardNo - 1]! * 1000 * (1 + PITCH_SPREAD * random.normalWithin(3))),
-          confidencePercent: Math.min(99, Math.round(100 * (1 - 1 / Math.sqrt(ratio)))),
-        })
-      }
-    },
+  restart(): void {
+    this.waiting = []
+  }
+
+  expect(stringNo: number, frameNo: number, startTenthMs: number): void {
+    this.waiting = this.waiting.filter((each) => each.stringNo !== stringNo)
+    this.waiting.push({ stringNo, dueFrame: frameNo + this.reportFrames, startTenthMs })
+  }
+
+  report(frameNo: number, events: BenchEvent[], hearing: Hearing): void {
+    if (this.waiting.length === 0) return
+    const due = this.waiting.filter((each) => each.dueFrame <= frameNo)
+    if (due.length === 0) return
+    this.waiting = this.waiting.filter((each) => each.dueFrame > frameNo)
+    for (const each of due) {
+      const event = this.pitchOf(each, frameNo, hearing)
+      if (event) events.push(event)
+    }
+  }
+
+  private pitchOf(expected: Expected, frameNo: number, hearing: Hearing): BenchEvent | null {
+    const loudest = (stringNo: number): { point: number; power: number } =>
+      this.points
+        .map((point) => ({ point, power: hearing.powerAt(stringNo, point) }))
+        .reduce((best, each) => (each.power > best.power ? each : best))
+    let heard = { stringNo: expected.stringNo, ...loudest(expected.stringNo) }
+    const drownsFrom = heard.power * DROWNED_RATIO
+    for (let stringNo = 1; stringNo <= 6; stringNo++) {
+      const other = loudest(stringNo)
+      if (other.power > drownsFrom && other.power > heard.power) heard = { stringNo, ...other }
+    }
+    const ratio = heard.power / hearing.noiseAt(heard.point)
+    if (!(ratio >= LEAST_RATIO)) return null
+    const offset = 1 + PITCH_SPREAD * this.random.normalWithin(3)
+    return {
+      kind: 'pitch',
+      frame: frameNo,
+      startTenthMs: expected.startTenthMs + STRETCH_FROM_MS * 10,
+      durationTenthMs: STRETCH_MS * 10,
+      channel: heard.point === JACK ? 0 : heard.point + 1,
+      milliHz: Math.round(hearing.tuning[heard.stringNo - 1]! * 1000 * offset),
+      confidencePercent: Math.min(99, Math.round(100 * (1 - 1 / Math.sqrt(ratio)))),
+    }
   }
 }

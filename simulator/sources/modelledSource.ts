@@ -10,8 +10,7 @@ import { STANDARD_TUNING } from '../model/circuit.ts'
 import type { Tuning } from '../model/circuit.ts'
 import { makeInstrument } from '../model/instrument.ts'
 import type { Circuit, InstrumentParts } from '../model/instrument.ts'
-import { makeModelledBench } from '../model/modelledBench.ts'
-import type { ModelledBench } from '../model/modelledBench.ts'
+import { ModelledBench } from '../model/modelledBench.ts'
 import { makeRandom } from '../model/random.ts'
 import type { BenchSource } from './source.ts'
 
@@ -96,7 +95,7 @@ export function makeModelledSource(options: ModelledSourceOptions): ModelledSour
 
   function place({ seed, faults, scatterDb }: PlaceWish): { parts: InstrumentParts; bench: ModelledBench } {
     const parts = applyFaults(makeInstrument(seed, circuit), faults)
-    const bench = makeModelledBench({
+    const bench = new ModelledBench({
       parts,
       bench: input,
       tuning,

@@ -32,6 +32,11 @@ describe('makeAutomaticHand()', () => {
     expect(watch(ask('leaveUnplugged'), 60).map(({ act }) => act.kind)).toEqual(['unplug'])
   })
 
+  it('puts a plug that is out back in before it goes on, and lets the preamp settle', () => {
+    const acts = watch(ask('dampThenPluck', 4), 300, { plugged: false, pluckSeen: false })
+    expect(acts.map(({ act }) => act.kind)).toEqual(['plug'])
+  })
+
   it('damps, waits and plucks the string that is asked for, again and again', () => {
     const acts = watch(ask('dampThenPluck', 4), 400)
     expect(acts.map(({ act }) => act.kind).slice(0, 4)).toEqual(['damp', 'pluck', 'damp', 'pluck'])
