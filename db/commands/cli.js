@@ -4,6 +4,7 @@ import { existsSync } from 'node:fs'
 import { StartFault } from '../fault.js'
 import { ensureModules } from '../modules.js'
 import { openDatabase } from '../openDatabase.js'
+import { forgetPrepared } from '../prepared.js'
 import { readSettings } from '../settings.js'
 import { runForeground } from '../runForeground.js'
 
@@ -19,7 +20,9 @@ export async function run([tool = '', ...args]) {
   if (!existsSync(script)) throw new StartFault(`There is no tool server/cli/${tool}.ts: check its name.`)
   const database = await openDatabase(settings)
   try {
-    const environment = ownerTools.includes(tool) ? ownerEnvironment : appEnvironment
+    const changesTables = ownerTools.includes(tool)
+    if (changesTables) forgetPrepared(settings)
+    const environment = changesTables ? ownerEnvironment : appEnvironment
     return await runForeground([script, ...args], environment(settings, database))
   } finally {
     await database.leave()

@@ -7,6 +7,7 @@ import { built, ownerEnvironment } from '../environment.js'
 import { StartFault } from '../fault.js'
 import { ensureModules } from '../modules.js'
 import { openDatabase } from '../openDatabase.js'
+import { forgetPrepared } from '../prepared.js'
 import { printLine, step } from '../progress.js'
 import { runChild } from '../runChild.js'
 import { isDataFolderClaimed } from '../running.js'
@@ -39,6 +40,7 @@ export async function run(args) {
   await ensureBuilt(['server'])
   const database = await openDatabase(settings)
   try {
+    forgetPrepared(settings)
     const name = values.into ?? new URL(database.ownerUrl).pathname.slice(1)
     const addresses = {
       appUrl: withName(database.appUrl, name),

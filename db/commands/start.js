@@ -10,6 +10,7 @@ import { openDatabase } from '../openDatabase.js'
 import { ensurePackages } from '../packages.js'
 import { requireFreePort } from '../ports.js'
 import { startTimeOf } from '../processes.js'
+import { isPrepared, notePrepared } from '../prepared.js'
 import { printLine, step } from '../progress.js'
 import { runChild } from '../runChild.js'
 import { claimDataFolder, endLeftOvers, forgetRunning, noteRunning } from '../running.js'
@@ -92,6 +93,7 @@ function makeDataFolder(dataDir) {
 
 /** @param {Settings} settings @param {OpenDatabase} database @param {AbortSignal} signal */
 async function prepareTables(settings, database, signal) {
+  if (isPrepared(settings)) return
   /** @param {string} title @param {string} tool @param {NodeJS.ProcessEnv} env */
   const runTool = (title, tool, env) =>
     step(
@@ -102,6 +104,7 @@ async function prepareTables(settings, database, signal) {
   await runTool('Bringing the tables up to date', 'migrate', ownerEnvironment(settings, database))
   if (settings.mode === 'demo')
     await runTool('Making the demo records', 'seed', appEnvironment(settings, database))
+  notePrepared(settings)
 }
 
 /** @param {Settings} settings @param {OpenDatabase} database @param {AbortSignal} signal @param {Undo} onEnd */

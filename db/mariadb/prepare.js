@@ -68,6 +68,7 @@ function requireWholeFolder(instance) {
 
 /** @param {Instance} instance */
 async function initialise(instance) {
+  rmSync(path.join(instance.root, 'prepared'), { force: true })
   const args = [
     '--no-defaults',
     `--datadir=${instance.unfinishedDir}`,
