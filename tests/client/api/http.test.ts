@@ -91,7 +91,7 @@ function fakeBrowser(
         addEventListener: (_name: string, listener: unknown) => {
           tab.listener = listener as (event: MessageEvent) => void
         },
-      } as HttpDeps['channel'],
+      },
       storage: {
         getItem: (key) => kept.get(key) ?? null,
         setItem: (key, value) => void kept.set(key, value),
