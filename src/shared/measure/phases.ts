@@ -1,22 +1,9 @@
 import type { BenchEvent, Frame } from '../contract/frames.ts'
 import type { RunPhase } from '../contract/measured.ts'
-import {
-  CENSOR_DB,
-  JACK_REST_MOST_MS,
-  JACK_REST_MS,
-  NOISE_PATIENCE_MS,
-  NOTHING_CAME_MS,
-  NOT_YET_QUIET_MS,
-  SAME_PLUCK_MS,
-  SETTLE_LEAST_MS,
-  SETTLE_MOST_MS,
-  UNPLUGGED_MS,
-  WIGGLE_GRACE_MS,
-  WIGGLE_READY_MS,
-  WINDOW_TO_MS,
-} from './constants.ts'
+import { CENSOR_DB, NOTHING_CAME_MS, SAME_PLUCK_MS, WIGGLE_READY_MS, WINDOW_TO_MS } from './constants.ts'
 import { evaluateRun } from './evaluateRun.ts'
 import { framesOf } from './framesOf.ts'
+import { foldJackRest, foldSettle, foldUnplugged, foldWiggle } from './jackPhases.ts'
 import {
   restartRest,
   restartUnplugged,
@@ -24,20 +11,21 @@ import {
   takeContact,
   takeDisturbance,
   takeInsulation,
-  takeRestFrame,
-  takeUnpluggedFrame,
-  takeWiggleFrame,
 } from './jackWatch.ts'
 import { decideRun, stringsInGuardBand } from './judgeRun.ts'
 import { forgetLevels, meanPowerIn, pushFrame } from './levelRing.ts'
 import { dbOfPower } from './meanPowerDb.ts'
-import { hasWindow, isQuiet, latestSums, restartNoiseStretch, takeNoiseFrame } from './noiseStretch.ts'
-import { disarmOnsets, onsetsAt } from './onsetWatch.ts'
+import { foldNoise, takeHum, takeLatestNoise } from './noisePhase.ts'
+import { restartNoiseStretch } from './noiseStretch.ts'
+import { disarmOnsets } from './onsetWatch.ts'
+import { elapsedMs } from './phaseTime.ts'
 import { forgetPitches, logPitch } from './pitchLog.ts'
 import { endPlucks, interruptPluck, takeNoSignal, watchPlucks } from './plucks.ts'
+import { progressOf } from './progressOf.ts'
+import { refusalToGoOn } from './refusalToGoOn.ts'
 import { rulesToEnter } from './runPlan.ts'
-import { hasSettled, restartSettleWatch, takeSettleFrame } from './settleWatch.ts'
-import { askedString, channelOf, isFinished, keepNoise, type HumEvent, type RunState } from './state.ts'
+import { restartSettleWatch } from './settleWatch.ts'
+import { askedString, channelOf, isFinished, type RunState } from './state.ts'
 import { askForOneMore, type StringTally } from './stringTally.ts'
 import { verdictOf } from './verdictOf.ts'
 
@@ -62,13 +50,17 @@ export function foldFrame(state: RunState, frame: Frame, events: readonly BenchE
 function foldIntoPhase(state: RunState, frameNo: number, frame: Frame): void {
   switch (state.phase) {
     case 'unplugged':
-      return foldUnplugged(state, frame)
+      if (foldUnplugged(state, frame)) advance(state)
+      return
     case 'settle':
-      return foldSettle(state, frame)
+      if (foldSettle(state, frame)) advance(state)
+      return
     case 'jackRest':
-      return foldJackRest(state, frame)
+      if (foldJackRest(state, frame)) advance(state)
+      return
     case 'noise':
-      return foldNoise(state, frameNo, frame)
+      if (foldNoise(state, frameNo, frame)) advance(state)
+      return
     case 'strings':
       watchPlucks(state, frameNo)
       if (askedString(state) === null) finishStrings(state)
@@ -77,16 +69,12 @@ function foldIntoPhase(state: RunState, frameNo: number, frame: Frame): void {
       if (elapsedMs(state) >= WIGGLE_READY_MS) beginWiggle(state, 'itself')
       return
     case 'wiggle':
-      return foldWiggle(state, frame)
+      if (foldWiggle(state, frame)) advance(state)
+      return
     case 'entry':
     case 'done':
     case 'stopped':
   }
-}
-
-/** ms since the present phase began. */
-export function elapsedMs(state: RunState): number {
-  return (state.frames - state.phaseFromFrame) * state.setup.frameMs
 }
 
 function enterPhase(state: RunState, phase: RunPhase): void {
@@ -186,99 +174,6 @@ function breakOff(state: RunState): void {
   }
 }
 
-function foldUnplugged(state: RunState, frame: Frame): void {
-  const { jack } = state
-  if (jack.unpluggedDone) {
-    if (frame.plugged === true) advance(state)
-    return
-  }
-  if (frame.plugged !== false) {
-    if (jack.unplugged.frames > 0) restartUnplugged(jack)
-    return
-  }
-  takeUnpluggedFrame(jack, frame)
-  if (jack.unplugged.frames * state.setup.frameMs >= UNPLUGGED_MS) {
-    jack.unpluggedDone = true
-    state.changes++
-  }
-}
-
-function foldSettle(state: RunState, frame: Frame): void {
-  if (frame.plugged === false) {
-    if (state.settle.frames > 0) state.changes++
-    restartSettleWatch(state.settle)
-    return
-  }
-  if (state.settle.frames === 0) state.changes++
-  takeSettleFrame(state.settle, frame)
-  if (hasSettled(state.settle) || settledMs(state) >= SETTLE_MOST_MS) advance(state)
-}
-
-/** ms since the plug was seen in, while the run settles. */
-export function settledMs(state: RunState): number {
-  return state.settle.frames * state.setup.frameMs
-}
-
-function foldJackRest(state: RunState, frame: Frame): void {
-  const { jack } = state
-  const tooLong = elapsedMs(state) >= JACK_REST_MOST_MS
-  if (frame.plugged === false && !tooLong) return restartRest(jack)
-  takeRestFrame(jack, frame)
-  if (jack.rest.frames * state.setup.frameMs < JACK_REST_MS && !tooLong) return
-  jack.restDone = true
-  advance(state)
-}
-
-function foldNoise(state: RunState, frameNo: number, frame: Frame): void {
-  const { stretch, onsets, ring } = state
-  onsetsAt(onsets, ring, frameNo)
-  const quietBefore = stretch.quiet > 0
-  if (frame.plugged === false) restartNoiseStretch(stretch)
-  else takeNoiseFrame(stretch, frameNo, frame, onsets.above !== 0)
-  if (stretch.quiet > 0 !== quietBefore) state.changes++
-  if (elapsedMs(state) === framesOf(NOT_YET_QUIET_MS, state.setup.frameMs) * state.setup.frameMs)
-    state.changes++
-  if (stretch.inBlock !== 0) return
-  if (isQuiet(stretch)) {
-    const from = stretch.quietFromFrame
-    for (const event of state.humWaiting) keepHumWithin(state, event, from, frameNo + 1)
-    const humDone = !state.plan.judgesHum || state.hum.some((event) => event !== null)
-    if (humDone || elapsedMs(state) >= NOISE_PATIENCE_MS) {
-      state.quietFrames = { from, to: frameNo + 1 }
-      keepNoise(state, latestSums(stretch, frameNo))
-      advance(state)
-    }
-  } else if (elapsedMs(state) >= NOISE_PATIENCE_MS && hasWindow(stretch)) takeLatest(state)
-}
-
-/** Goes on with the latest stretch as it is. Not with the quietest one: that would hide a crackle. */
-function takeLatest(state: RunState): void {
-  const { stretch } = state
-  const lastFrame = state.frames - 1 - stretch.inBlock
-  const sums = latestSums(stretch, lastFrame)
-  state.quietFrames = { from: sums.fromFrame, to: lastFrame + 1 }
-  for (const event of state.humWaiting) keepHumWithin(state, event, sums.fromFrame, lastFrame + 1)
-  keepNoise(state, sums)
-  advance(state)
-}
-
-function takeHum(state: RunState, event: HumEvent): void {
-  if (state.phase === 'noise') {
-    state.humWaiting.push(event)
-    // only what can still lie in a stretch that is quiet up to now
-    if (state.humWaiting.length > 64) state.humWaiting.shift()
-  } else if (state.noise !== null) keepHumWithin(state, event, state.quietFrames.from, state.quietFrames.to)
-}
-
-function keepHumWithin(state: RunState, event: HumEvent, fromFrame: number, toFrame: number): void {
-  const tenthMs = state.setup.frameMs * 10
-  const end = event.startTenthMs + event.durationTenthMs
-  if (event.startTenthMs < fromFrame * tenthMs || end > toFrame * tenthMs) return
-  if (state.hum[event.channel] === event) return
-  state.hum[event.channel] = event
-  state.changes++
-}
-
 function beginWiggle(state: RunState, by: 'person' | 'pedal' | 'itself'): void {
   const tenthMs = state.setup.frameMs * 10
   state.jack.wiggleStartedBy = by
@@ -290,14 +185,6 @@ function beginWiggle(state: RunState, by: 'person' | 'pedal' | 'itself'): void {
   }
   const frames = framesOf(state.setup.sheet.wiggleMs, state.setup.frameMs)
   restartWiggle(state.jack, state.frames * tenthMs, (state.frames + frames) * tenthMs)
-}
-
-function foldWiggle(state: RunState, frame: Frame): void {
-  const lastedMs = elapsedMs(state)
-  if (lastedMs <= state.setup.sheet.wiggleMs) takeWiggleFrame(state.jack, frame)
-  if (lastedMs < state.setup.sheet.wiggleMs + WIGGLE_GRACE_MS) return
-  state.jack.wiggleDone = true
-  advance(state)
 }
 
 /** All strings have what they need: asks for more where the guard band says so, else goes on. */
@@ -313,30 +200,6 @@ function finishStrings(state: RunState): void {
   if (!more) advance(state)
 }
 
-/** Why 'go on' does not fit now, for the person; null when it does. */
-export function refusalToGoOn(state: RunState): string | null {
-  switch (state.phase) {
-    case 'unplugged':
-      return state.plugged === null ? null : 'The bench sees the plug and goes on by itself.'
-    case 'settle':
-      return settledMs(state) >= SETTLE_LEAST_MS ? null : 'Wait until the preamp has settled, at least 3 s.'
-    case 'noise':
-      if (elapsedMs(state) >= NOT_YET_QUIET_MS && hasWindow(state.stretch)) return null
-      return 'Keep the strings muted; the quiet stretch is found by itself.'
-    case 'jackRest':
-      return 'Hold still for a second; the run goes on by itself.'
-    case 'wiggle':
-      return 'Keep wiggling until the time is over.'
-    case 'strings':
-    case 'wiggleReady':
-    case 'entry':
-      return null
-    case 'done':
-    case 'stopped':
-      return 'The run has ended.'
-  }
-}
-
 /** 'Go on', as the present phase means it. */
 export function goOn(state: RunState, by: 'person' | 'pedal'): void {
   switch (state.phase) {
@@ -345,7 +208,8 @@ export function goOn(state: RunState, by: 'person' | 'pedal'): void {
     case 'entry':
       return advance(state)
     case 'noise':
-      return takeLatest(state)
+      takeLatestNoise(state)
+      return advance(state)
     case 'strings':
       return sayNoSignal(state, askedString(state)!)
     case 'wiggleReady':
@@ -384,38 +248,6 @@ export function backToStrings(state: RunState): void {
   if (state.phase === 'strings') return
   enterPhase(state, 'strings')
   disarmOnsets(state.onsets)
-}
-
-/** 0..1 of the present phase where it has a length, else null. */
-export function progressOf(state: RunState): number | null {
-  const share = (doneMs: number, allMs: number) => Math.min(1, doneMs / allMs)
-  switch (state.phase) {
-    case 'unplugged':
-      return state.jack.unpluggedDone
-        ? 1
-        : share(state.jack.unplugged.frames * state.setup.frameMs, UNPLUGGED_MS)
-    case 'settle':
-      return share(settledMs(state), SETTLE_LEAST_MS)
-    case 'jackRest':
-      return share(state.jack.rest.frames * state.setup.frameMs, JACK_REST_MS)
-    case 'noise':
-      return state.stretch.quiet / state.stretch.wanted
-    case 'strings': {
-      let accepted = 0
-      let wanted = 0
-      for (const tally of state.strings) {
-        wanted += tally.wanted
-        accepted += tally.state === 'todo' ? tally.accepted.length : tally.wanted
-      }
-      return share(accepted, wanted)
-    }
-    case 'wiggleReady':
-      return share(elapsedMs(state), WIGGLE_READY_MS)
-    case 'wiggle':
-      return share(elapsedMs(state), state.setup.sheet.wiggleMs)
-    default:
-      return null
-  }
 }
 
 function noteProgress(state: RunState): void {

@@ -67,7 +67,7 @@ describe('balanceDb()', () => {
           const membersOf = (shift: number) =>
             referenceOf(elements(...levels.map((value) => value + shift))).members
           fc.pre(JSON.stringify(membersOf(0)) === JSON.stringify(membersOf(offset)))
-          before.forEach((value, i) => expect(after[i]).toBeCloseTo(value!, 9))
+          before.forEach((value, i) => expect(after[i]).toBeCloseTo(value, 9))
         },
       ),
     )
