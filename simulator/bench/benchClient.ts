@@ -1,18 +1,11 @@
-import { io } from 'socket.io-client'
-import type { Socket } from 'socket.io-client'
-import { BENCH_NAMESPACE, PROTOCOL_VERSION, RunOrder, RunPrompt } from '../../src/shared/contract/frames.ts'
-import type {
-  BenchAnswer,
-  BenchHello,
-  BenchToServer,
-  FramesAnswer,
-  HelloAnswer,
-  ServerToBench,
-} from '../../src/shared/contract/frames.ts'
 import { ERRORS } from '../../src/shared/contract/errors.ts'
 import type { ErrorCode, Problem } from '../../src/shared/contract/errors.ts'
+import { PROTOCOL_VERSION, RunOrder, RunPrompt } from '../../src/shared/contract/frames.ts'
+import type { BenchAnswer, BenchHello, FramesAnswer, HelloAnswer } from '../../src/shared/contract/frames.ts'
 import { SimulationCommand } from '../../src/shared/contract/simulation.ts'
 import type { BenchSource } from '../sources/source.ts'
+import { BenchConnection } from './benchConnection.ts'
+import type { BenchSocket } from './benchConnection.ts'
 import { systemClock } from './clock.ts'
 import type { Clock } from './clock.ts'
 import { makeFrameRun } from './frameRun.ts'
@@ -49,136 +42,142 @@ export interface BenchClient {
 }
 
 const RETRY_MS = 1000
-/** A refused token is tried again seldom: only a person can put it right. */
-const TOKEN_RETRY_MS = 30_000
 /** A verification is renewed when it ends within this time and no run is open, ms. */
 const RENEW_BEFORE_MS = 3_600_000
 const MOST_REFUSALS_IN_A_ROW = 5
 
-type BenchSocket = Socket<ServerToBench, BenchToServer>
-
 /** Speaks for a source to the server: hello, verification, frames in batches, and all that can go wrong between. */
 export function createBenchClient(options: BenchClientOptions): BenchClient {
-  const { source } = options
-  const clock = options.clock ?? systemClock
-  const log = options.log ?? (() => undefined)
-  const batchMs = options.batchMs ?? 50
-  const answerTimeoutMs = options.answerTimeoutMs ?? 10_000
-  const backoff = options.backoffMs ?? { first: 250, most: 10_000 }
-  const jitter = options.jitter ?? Math.random
-  const refusals = new Map<string, number>()
-  let socket: BenchSocket | null = null
-  let state: BenchClientState = 'stopped'
-  let attempts = 0
-  let run: FrameRun | null = null
-  let prompt: RunPrompt | null = null
-  let inFlight = false
-  let holdSendingUntilMs = 0
-  let refusedInARow = 0
-  let verifiedUntil: string | null = null
-  let verifying = false
-  let lastTickMs = 0
-  let cancelTick: () => void = () => undefined
-  let cancelConnect: () => void = () => undefined
+  return new Client(options)
+}
 
-  function refused(problem: Problem, of: string): void {
-    refusals.set(problem.code, (refusals.get(problem.code) ?? 0) + 1)
-    log(`${of} was refused (${problem.code}): ${problem.title} ${problem.remedy}`)
+class Client implements BenchClient {
+  private readonly options: BenchClientOptions
+  private readonly source: BenchSource
+  private readonly clock: Clock
+  private readonly answerTimeoutMs: number
+  private readonly connection: BenchConnection
+  private readonly refusalCounts = new Map<string, number>()
+  private now: BenchClientState = 'stopped'
+  private run: FrameRun | null = null
+  private prompt: RunPrompt | null = null
+  private inFlight = false
+  private verifying = false
+  private holdSendingUntilMs = 0
+  private refusedInARow = 0
+  private verifiedUntil: string | null = null
+  private lastTickMs = 0
+  private cancelTick: () => void = () => undefined
+
+  constructor(options: BenchClientOptions) {
+    this.options = options
+    this.source = options.source
+    this.clock = options.clock ?? systemClock
+    this.answerTimeoutMs = options.answerTimeoutMs ?? 10_000
+    this.connection = new BenchConnection({
+      url: options.url,
+      token: options.token,
+      clock: this.clock,
+      backoffMs: options.backoffMs ?? { first: 250, most: 10_000 },
+      jitter: options.jitter ?? Math.random,
+      log: (line) => this.log(line),
+      refused: (problem, of) => this.refused(problem, of),
+      opened: (socket, current) => {
+        this.now = 'connecting'
+        this.listen(socket, current)
+      },
+      connected: (socket) => this.hello(socket),
+      lost: () => {
+        this.now = 'waiting'
+        this.inFlight = false
+        this.verifying = false
+        this.source.serverSeen?.(false)
+      },
+    })
   }
 
-  function connect(): void {
-    state = 'connecting'
-    const opened: BenchSocket = io(options.url + BENCH_NAMESPACE, {
-      transports: ['websocket'],
-      auth: { token: options.token },
-      reconnection: false,
-      forceNew: true,
-    })
-    socket = opened
-    const current = (): boolean => socket === opened
-    opened.on('connect', () => {
-      if (current()) hello(opened)
-    })
-    opened.on('connect_error', (error: Error & { data?: Problem }) => {
-      if (!current()) return
-      if (error.data?.code) refused(error.data, 'The connection')
-      else log(`No connection: ${error.message}`)
-      reconnect(error.data?.code === 'bench.token' ? TOKEN_RETRY_MS : 0)
-    })
-    opened.on('disconnect', (reason) => {
-      if (!current()) return
-      log(`The connection ended: ${reason}`)
-      reconnect(0)
-    })
-    listen(opened, current)
+  start(): void {
+    if (this.now !== 'stopped') return
+    this.lastTickMs = this.clock.nowMs()
+    this.connection.open()
+    this.tick()
   }
 
-  function reconnect(leastMs: number): void {
-    dropSocket()
-    source.serverSeen?.(false)
-    state = 'waiting'
-    const waitMs =
-      Math.min(backoff.most, backoff.first * 2 ** Math.min(attempts, 16)) * (0.5 + 0.5 * jitter())
-    attempts += 1
-    cancelConnect()
-    cancelConnect = clock.after(Math.max(waitMs, leastMs), connect)
+  stop(): void {
+    this.cancelTick()
+    this.connection.close()
+    this.now = 'stopped'
   }
 
-  function dropSocket(): void {
-    const old = socket
-    socket = null
-    inFlight = false
-    verifying = false
-    old?.removeAllListeners()
-    old?.disconnect()
+  state(): BenchClientState {
+    return this.now
   }
 
-  function listen(opened: BenchSocket, current: () => boolean): void {
-    opened.on('run:start', (message) => {
+  refusals(): ReadonlyMap<string, number> {
+    return this.refusalCounts
+  }
+
+  runId(): string | null {
+    return this.run?.id ?? null
+  }
+
+  private log(line: string): void {
+    this.options.log?.(line)
+  }
+
+  private refused(problem: Problem, of: string): void {
+    this.refusalCounts.set(problem.code, (this.refusalCounts.get(problem.code) ?? 0) + 1)
+    this.log(`${of} was refused (${problem.code}): ${problem.title} ${problem.remedy}`)
+  }
+
+  private listen(socket: BenchSocket, current: () => boolean): void {
+    socket.on('run:start', (message) => {
       const order = RunOrder.safeParse(message)
-      if (current() && order.success) begin(order.data)
+      if (current() && order.success) this.begin(order.data)
     })
-    opened.on('run:prompt', (message) => {
-      const parsed = RunPrompt.safeParse(message)
-      if (!current() || !parsed.success) return
-      prompt = parsed.data
-      if (run?.id === prompt.run) source.prompt(prompt)
+    socket.on('run:prompt', (message) => {
+      const prompt = RunPrompt.safeParse(message)
+      if (!current() || !prompt.success) return
+      this.prompt = prompt.data
+      if (this.run?.id === prompt.data.run) this.source.prompt(prompt.data)
     })
-    opened.on('run:committed', (message) => {
-      if (run && run.id === message.run) run.committed(message.committed)
+    socket.on('run:committed', (message) => {
+      if (this.run && this.run.id === message.run) this.run.committed(message.committed)
     })
-    opened.on('run:ended', (message) => {
-      if (run?.id !== message.run) return
-      log(`Run ${message.run} ended: ${message.outcome}, verdict ${message.verdict ?? 'none yet'}`)
-      forget()
+    socket.on('run:ended', (message) => {
+      if (this.run?.id !== message.run) return
+      this.log(`Run ${message.run} ended: ${message.outcome}, verdict ${message.verdict ?? 'not there'}`)
+      this.forget()
     })
-    opened.on('bench:refused', (problem) => {
-      refused(problem, 'A message')
+    socket.on('bench:refused', (problem) => this.refused(problem, 'A message'))
+    socket.on('bench:replaced', (problem) => {
+      if (current()) this.giveWay(problem)
     })
-    opened.on('bench:replaced', (problem) => {
-      if (!current()) return
-      refused(problem, 'This connection')
-      cancelTick()
-      dropSocket()
-      state = 'replaced'
-      source.serverSeen?.(false)
-      options.onReplaced?.()
-    })
-    opened.on('bench:simulate', (message, answer) => {
-      const result = simulate(message)
+    socket.on('bench:simulate', (message, answer) => {
+      const result = this.simulate(message)
       if (typeof answer === 'function') answer(result)
     })
   }
 
-  function simulate(message: unknown): BenchAnswer<object> {
-    if (!source.simulate) return { ok: false, problem: problemOf('bench.not-simulated') }
+  /** The newest connection of a bench wins: this one does not come back. */
+  private giveWay(problem: Problem): void {
+    this.refused(problem, 'This connection')
+    this.stop()
+    this.now = 'replaced'
+    this.source.serverSeen?.(false)
+    this.options.onReplaced?.()
+  }
+
+  private simulate(message: unknown): BenchAnswer<object> {
+    if (!this.source.simulate) return { ok: false, problem: problemOf('bench.not-simulated') }
     const command = SimulationCommand.safeParse(message)
     if (!command.success) return { ok: false, problem: problemOf('protocol.message') }
-    source.simulate(command.data)
+    this.source.simulate(command.data)
     return { ok: true }
   }
 
-  function hello(opened: BenchSocket): void {
+  private hello(socket: BenchSocket): void {
+    const { source, run } = this
     const message: BenchHello = {
       protocolVersion: PROTOCOL_VERSION,
       channelKind: source.channelKind,
@@ -186,172 +185,157 @@ export function createBenchClient(options: BenchClientOptions): BenchClient {
       mainsHz: source.mainsHz,
       capabilities: [...source.capabilities],
       algorithms: { ...source.algorithms },
-      wallClock: clock.wallClock().toISOString(),
+      wallClock: this.clock.wallClock().toISOString(),
       holding: run ? { run: run.id, from: run.heldFrom() } : null,
     }
-    opened.timeout(answerTimeoutMs).emit('bench:hello', message, (late, answer: HelloAnswer) => {
-      if (socket !== opened) return
-      if (late || !answer.ok) {
-        if (!late && !answer.ok) refused(answer.problem, 'The hello')
-        reconnect(RETRY_MS)
-        return
-      }
-      attempts = 0
-      state = 'ready'
-      refusedInARow = 0
-      holdSendingUntilMs = 0
-      verifiedUntil = answer.verifiedUntil
-      log(`Connected as ${answer.name}`)
-      source.serverSeen?.(true)
-      if (answer.order) begin(answer.order)
-      else if (run) forget()
-      if (!answer.verified) verify()
+    socket.timeout(this.answerTimeoutMs).emit('bench:hello', message, (late, answer: HelloAnswer) => {
+      if (this.connection.current() !== socket) return
+      if (!late && answer.ok) return this.welcome(answer)
+      if (!late && !answer.ok) this.refused(answer.problem, 'The hello')
+      this.connection.openLater(RETRY_MS)
     })
   }
 
-  function begin(order: RunOrder): void {
-    const known = run?.id === order.run
-    if (run && known && run.goOnFrom(order.from)) {
-      run.setWindow(order.window)
+  private welcome(answer: Extract<HelloAnswer, { ok: true }>): void {
+    this.connection.settle()
+    this.now = 'ready'
+    this.refusedInARow = 0
+    this.holdSendingUntilMs = 0
+    this.verifiedUntil = answer.verifiedUntil
+    this.log(`Connected as ${answer.name}`)
+    this.source.serverSeen?.(true)
+    if (answer.order) this.begin(answer.order)
+    else if (this.run) this.forget()
+    if (!answer.verified) this.verify()
+  }
+
+  private begin(order: RunOrder): void {
+    const known = this.run?.id === order.run
+    if (this.run && known && this.run.goOnFrom(order.from)) {
+      this.run.setWindow(order.window)
     } else {
-      if (run && !known) forget()
-      log(`Run ${order.run} of ${order.serial} from frame ${order.from}`)
-      source.start(order)
-      run = makeFrameRun(source, order, { mostHeld: options.mostHeldFrames, fresh: true })
+      if (this.run && !known) this.forgetRun()
+      this.log(`Run ${order.run} of ${order.serial} from frame ${order.from}`)
+      this.source.start(order)
+      this.run = makeFrameRun(this.source, order, this.options.mostHeldFrames)
     }
-    if (prompt?.run === order.run) source.prompt(prompt)
-    flush()
+    if (this.prompt?.run === order.run) this.source.prompt(this.prompt)
+    this.flush()
   }
 
-  function forget(): void {
-    run = null
-    prompt = null
-    source.finish()
+  private forget(): void {
+    this.prompt = null
+    this.forgetRun()
   }
 
-  function verify(): void {
-    const opened = socket
-    const measured = source.verifySelf?.()
-    if (!opened || !measured || verifying) return
-    verifying = true
-    opened.timeout(answerTimeoutMs).emit('bench:verify', measured, (late, answer) => {
-      if (socket !== opened) return
-      verifying = false
+  private forgetRun(): void {
+    this.run = null
+    this.source.finish()
+  }
+
+  private verify(): void {
+    const socket = this.connection.current()
+    if (!socket || this.verifying) return
+    const measured = this.source.verifySelf?.()
+    if (!measured) return
+    this.verifying = true
+    socket.timeout(this.answerTimeoutMs).emit('bench:verify', measured, (late, answer) => {
+      if (this.connection.current() !== socket) return
+      this.verifying = false
       if (late) return
-      if (!answer.ok) {
-        refused(answer.problem, 'The verification')
-        return
-      }
-      verifiedUntil = answer.validUntil
-      log(
+      if (!answer.ok) return this.refused(answer.problem, 'The verification')
+      this.verifiedUntil = answer.validUntil
+      this.log(
         answer.passed
-          ? `Verified until ${answer.validUntil ?? '?'}`
+          ? `Verified until ${answer.validUntil ?? 'further notice'}`
           : `Not verified: ${answer.reasons.join('; ')}`,
       )
     })
   }
 
-  function renewVerification(): void {
-    if (state !== 'ready' || run || verifiedUntil === null) return
-    const leftMs = Date.parse(verifiedUntil) - clock.wallClock().getTime()
-    if (leftMs < RENEW_BEFORE_MS) {
-      verifiedUntil = null
-      verify()
-    }
+  private renewVerification(): void {
+    if (this.now !== 'ready' || this.run || this.verifiedUntil === null) return
+    const leftMs = Date.parse(this.verifiedUntil) - this.clock.wallClock().getTime()
+    if (!(leftMs < RENEW_BEFORE_MS)) return
+    this.verifiedUntil = null
+    this.verify()
   }
 
-  function flush(): void {
-    const opened = socket
-    if (!opened || !run || inFlight || state !== 'ready' || clock.nowMs() < holdSendingUntilMs) return
+  private flush(): void {
+    const socket = this.connection.current()
+    const { run } = this
+    if (!socket || !run || this.inFlight || this.now !== 'ready') return
+    if (this.clock.nowMs() < this.holdSendingUntilMs) return
     const batch = run.nextBatch()
     if (!batch) return
-    const sentRun = run
-    inFlight = true
-    opened.timeout(answerTimeoutMs).emit('bench:frames', batch, (late, answer: FramesAnswer) => {
-      if (socket !== opened) return
-      inFlight = false
-      if (run !== sentRun) {
-        flush()
-        return
+    this.inFlight = true
+    socket.timeout(this.answerTimeoutMs).emit('bench:frames', batch, (late, answer: FramesAnswer) => {
+      if (this.connection.current() !== socket) return
+      this.inFlight = false
+      if (this.run === run) {
+        if (late) this.log('No answer to a batch; it is sent again')
+        else if (answer.ok) this.taken(run, answer)
+        else this.notTaken(run, answer.problem)
       }
-      if (late) log('No answer to a batch; it is sent again')
-      else if (answer.ok) taken(sentRun, answer)
-      else notTaken(sentRun, answer.problem)
-      flush()
+      this.flush()
     })
   }
 
-  function taken(of: FrameRun, answer: { next: number; committed: number; window: number }): void {
-    refusedInARow = 0
-    of.accepted(answer.next, answer.committed, answer.window)
-    if (answer.window === 0) pause()
+  private taken(run: FrameRun, answer: { next: number; committed: number; window: number }): void {
+    this.refusedInARow = 0
+    run.accepted(answer.next, answer.committed, answer.window)
+    if (answer.window === 0) this.pause()
     // recordings and fast models do not wait for the clock
-    else if (!source.realTime || (source.timeScale ?? 1) > 1) of.make()
+    else if (!this.source.realTime || (this.source.timeScale ?? 1) > 1) run.make()
   }
 
-  function notTaken(of: FrameRun, problem: Problem): void {
-    refused(problem, 'A batch')
-    refusedInARow += 1
-    const wanted = problem.facts?.next
+  private notTaken(run: FrameRun, problem: Problem): void {
+    this.refused(problem, 'A batch')
+    this.refusedInARow += 1
+    const { next, window } = problem.facts ?? {}
     switch (problem.code) {
       case 'frames.gap':
-        if (typeof wanted !== 'number' || !of.goOnFrom(wanted)) helloAgain()
+        if (typeof next !== 'number' || !run.goOnFrom(next)) this.helloAgain()
         return
       case 'run.not-open':
       case 'run.unknown':
         // kept until the server says how it ended: it may ask again after its own restart
-        of.close()
+        run.close()
         return
       case 'frames.foreign':
-        of.close()
-        helloAgain()
-        return
-      case 'storage.away':
-        pause()
+        run.close()
+        this.helloAgain()
         return
       case 'frames.window':
-        of.setWindow(typeof problem.facts?.window === 'number' ? problem.facts.window : 1)
+        run.setWindow(typeof window === 'number' ? window : 1)
+        return
+      case 'storage.away':
+        this.pause()
         return
       default:
-        pause()
-        if (problem.code === 'protocol.hello-first' || refusedInARow >= MOST_REFUSALS_IN_A_ROW) helloAgain()
+        this.pause()
+        if (problem.code === 'protocol.hello-first' || this.refusedInARow >= MOST_REFUSALS_IN_A_ROW)
+          this.helloAgain()
     }
   }
 
-  function helloAgain(): void {
-    refusedInARow = 0
-    if (socket) hello(socket)
+  private helloAgain(): void {
+    const socket = this.connection.current()
+    this.refusedInARow = 0
+    if (socket) this.hello(socket)
   }
 
-  function pause(): void {
-    holdSendingUntilMs = clock.nowMs() + RETRY_MS
+  private pause(): void {
+    this.holdSendingUntilMs = this.clock.nowMs() + RETRY_MS
   }
 
-  function tick(): void {
-    cancelTick = clock.after(batchMs, tick)
-    const now = clock.nowMs()
-    run?.elapse(now - lastTickMs)
-    lastTickMs = now
-    flush()
-    renewVerification()
-  }
-
-  return {
-    start() {
-      if (state !== 'stopped') return
-      lastTickMs = clock.nowMs()
-      connect()
-      tick()
-    },
-    stop() {
-      cancelTick()
-      cancelConnect()
-      dropSocket()
-      state = 'stopped'
-    },
-    state: () => state,
-    refusals: () => refusals,
-    runId: () => run?.id ?? null,
+  private tick(): void {
+    this.cancelTick = this.clock.after(this.options.batchMs ?? 50, () => this.tick())
+    const now = this.clock.nowMs()
+    this.run?.elapse(now - this.lastTickMs)
+    this.lastTickMs = now
+    this.flush()
+    this.renewVerification()
   }
 }
 

@@ -33,12 +33,7 @@ export interface FrameRun {
   setWindow(window: number): void
 }
 
-export function makeFrameRun(
-  source: BenchSource,
-  order: RunOrder,
-  options: { mostHeld?: number; fresh: boolean },
-): FrameRun {
-  const mostHeld = options.mostHeld ?? MOST_HELD_FRAMES
+export function makeFrameRun(source: BenchSource, order: RunOrder, mostHeld = MOST_HELD_FRAMES): FrameRun {
   const held: HeldFrames = makeHeldFrames(order.from)
   let serverNext = order.from
   let sendNext = order.from
@@ -46,8 +41,8 @@ export function makeFrameRun(
   let creditMs = 0
   let ended = false
   let closed = false
-  // frames of before this start are gone, unless the source can give them again
-  let breakWaits = order.from > 0 && options.fresh && !source.repeatable
+  // what an earlier program held of this run is gone, unless the source can give it again
+  let breakWaits = order.from > 0 && !source.repeatable
 
   function due(): number {
     if (!source.realTime) return serverNext + 2 * MAX_BATCH_FRAMES - held.end()

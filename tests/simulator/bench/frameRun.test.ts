@@ -5,13 +5,13 @@ import { buildOrder, makeCountingSource } from '../../helpers/countingSource.ts'
 
 describe('makeFrameRun()', () => {
   it('makes a frame for each frame length of time and loses no fraction', () => {
-    const run = makeFrameRun(makeCountingSource(), buildOrder(), { fresh: true })
+    const run = makeFrameRun(makeCountingSource(), buildOrder())
     for (let i = 0; i < 10; i++) run.elapse(7)
     expect(run.nextBatch()!.frames).toHaveLength(7)
   })
 
   it('never sends more than the window or the protocol allows', () => {
-    const run = makeFrameRun(makeCountingSource(), buildOrder({ window: 30 }), { fresh: true })
+    const run = makeFrameRun(makeCountingSource(), buildOrder({ window: 30 }))
     run.elapse(5000)
     expect(run.nextBatch()!.frames).toHaveLength(30)
     run.setWindow(10_000)
@@ -19,7 +19,7 @@ describe('makeFrameRun()', () => {
   })
 
   it('keeps a fast model within 0.4 s of what the server has taken', () => {
-    const run = makeFrameRun(makeCountingSource({ timeScale: 50 }), buildOrder(), { fresh: true })
+    const run = makeFrameRun(makeCountingSource({ timeScale: 50 }), buildOrder())
     run.elapse(1000)
     expect(run.nextBatch()!.frames).toHaveLength(40)
     run.accepted(40, 0, 200)
@@ -29,9 +29,7 @@ describe('makeFrameRun()', () => {
   })
 
   it('gives a recording as fast as the server takes it and ends with it', () => {
-    const run = makeFrameRun(makeCountingSource({ realTime: false, lastFrame: 499 }), buildOrder(), {
-      fresh: true,
-    })
+    const run = makeFrameRun(makeCountingSource({ realTime: false, lastFrame: 499 }), buildOrder())
     let next = 0
     run.make()
     for (let batch = run.nextBatch(); batch; batch = run.nextBatch()) {
@@ -45,7 +43,7 @@ describe('makeFrameRun()', () => {
   })
 
   it('tells a discontinuity after a restart in the middle of a run', () => {
-    const run = makeFrameRun(makeCountingSource(), buildOrder({ from: 700 }), { fresh: true })
+    const run = makeFrameRun(makeCountingSource(), buildOrder({ from: 700 }))
     run.elapse(50)
     const batch = run.nextBatch()!
     expect(batch.from).toBe(700)
@@ -56,13 +54,13 @@ describe('makeFrameRun()', () => {
 
   it('tells none for a recording, whose frames are the same each time', () => {
     const source = makeCountingSource({ repeatable: true })
-    const run = makeFrameRun(source, buildOrder({ from: 700 }), { fresh: true })
+    const run = makeFrameRun(source, buildOrder({ from: 700 }))
     run.elapse(50)
     expect(run.nextBatch()!.events).toEqual([])
   })
 
   it('measures no further when it holds too much, and marks the break when it goes on', () => {
-    const run = makeFrameRun(makeCountingSource(), buildOrder(), { fresh: true, mostHeld: 100 })
+    const run = makeFrameRun(makeCountingSource(), buildOrder(), 100)
     run.elapse(5000)
     run.accepted(100, 100, 200)
     run.elapse(50)
@@ -73,7 +71,7 @@ describe('makeFrameRun()', () => {
   })
 
   it('goes on from any frame that it holds and from no other', () => {
-    const run = makeFrameRun(makeCountingSource(), buildOrder(), { fresh: true })
+    const run = makeFrameRun(makeCountingSource(), buildOrder())
     run.elapse(1000)
     run.accepted(100, 60, 200)
     expect(run.heldFrom()).toBe(60)
@@ -88,7 +86,7 @@ describe('makeFrameRun()', () => {
     const source = makeCountingSource({
       next: (frameNo) => (frameNo < there ? { frame: makeFrame(frameNo), events: [] } : ('notYet' as const)),
     })
-    const run = makeFrameRun(source, buildOrder(), { fresh: true })
+    const run = makeFrameRun(source, buildOrder())
     run.elapse(100)
     expect(run.nextBatch()!.frames).toHaveLength(3)
     there = 8
