@@ -103,13 +103,11 @@ export const useCheckStore = defineStore('check', () => {
     }
   }
 
+  /** null: no instrument has this serial yet */
   async function readInstrument(code: string, signal: AbortSignal): Promise<InstrumentView | null> {
-    try {
-      return await api('instruments.read', { params: { serial: code } }, { signal })
-    } catch (cause) {
-      if (cause instanceof ApiProblem && cause.code === 'instrument.unknown') return null
-      throw cause
-    }
+    const target = await api('scan.resolve', { params: { code } }, { signal })
+    if (target.kind === 'unknownSerial') return null
+    return api('instruments.read', { params: { serial: code } }, { signal })
   }
 
   async function readCautions(): Promise<void> {

@@ -21,7 +21,11 @@ const ANSWERS: Partial<Record<RouteKey, () => unknown>> = {
   'models.list': () => ({ items: [model] }),
   'cautions.read': () => ({ acknowledged: scene.cautionsRead ?? true, shift: 'early', acknowledgedAt: null }),
   'cautions.acknowledge': () => ({ acknowledged: true, shift: 'early', acknowledgedAt: null }),
-  'instruments.read': () => (scene.isUnknownSerial ? refuse('instrument.unknown', 404) : instrument),
+  'scan.resolve': () =>
+    scene.isUnknownSerial
+      ? { kind: 'unknownSerial', serial: 'HL2402001' }
+      : { kind: 'instrument', serial: 'HL2401873', modelName: 'Linden concert' },
+  'instruments.read': () => instrument,
   'runs.start': () => refuse(scene.startRefusal ?? 'bench.offline', 409, HOLDER),
   'runs.read': () => scene.view ?? refuse('run.unknown', 404),
   'runs.trace': () => (scene.view ? traceOf(scene.view) : refuse('run.unknown', 404)),

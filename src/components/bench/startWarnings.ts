@@ -26,14 +26,14 @@ export function startWarnings(
       .map((entry) => ruleName(entry.rule))
     if (byHand.length > 0) {
       warnings.push({
-        title: `This bench cannot measure: ${byHand.join(', ')}.`,
+        title: `This bench cannot measure: ${byHand.join('; ')}.`,
         remedy: 'Have a meter ready; the readings are typed in at the end.',
       })
     }
     if (never.length > 0) {
       const isRequired = missing.some((entry) => entry.required && !isEnterableByHand(entry.rule))
       warnings.push({
-        title: `Not tested on this bench: ${never.join(', ')}.`,
+        title: `Not tested on this bench: ${never.join('; ')}.`,
         remedy: isRequired ? 'It is required, so the verdict will be none.' : 'It is not required.',
       })
     }

@@ -38,7 +38,7 @@ describe('startWarnings()', () => {
     const warnings = startWarnings(bench({ capabilities }), model(aSheet()), aged)
     expect(warnings[0]!.title).toBe('This bench cannot measure: Battery under load.')
     expect(warnings[1]!.title).toBe(
-      'Not tested on this bench: Contact disturbances, Longest contact disturbance.',
+      'Not tested on this bench: Contact disturbances; Longest contact disturbance.',
     )
     expect(warnings[1]!.remedy).toContain('the verdict will be none')
   })
