@@ -98,6 +98,7 @@ export default tseslint.config(
   {
     files: [
       'server/cli/**',
+      'server/main.ts',
       'simulator/**',
       'db/**',
       'tests/perf/**',

@@ -9,8 +9,13 @@ import { refuseDemoAccounts } from './refuseDemoAccounts.ts'
 async function main(config: Config): Promise<void> {
   const log = createLog(config)
   const knex = connect(config.databaseUrl, 12)
-  await refuseDemoAccounts(knex, config)
-  const server = await createServer({ config, knex, log })
+  const server = await refuseDemoAccounts(knex, config)
+    .then(() => createServer({ config, knex, log }))
+    // An open pool would keep a refused server alive.
+    .catch(async (error: unknown) => {
+      await knex.destroy()
+      throw error
+    })
 
   let closing = false
   const close = async () => {
