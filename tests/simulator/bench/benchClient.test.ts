@@ -3,6 +3,7 @@ import { createBenchClient } from '../../../simulator/bench/benchClient.ts'
 import type { BenchClient, BenchClientOptions } from '../../../simulator/bench/benchClient.ts'
 import { makeModelledSource } from '../../../simulator/sources/modelledSource.ts'
 import type { BenchSource } from '../../../simulator/sources/source.ts'
+import type { SimulationCommand } from '../../../src/shared/contract/simulation.ts'
 import { makeArrivals } from '../../helpers/arrivals.ts'
 import type { Arrivals } from '../../helpers/arrivals.ts'
 import { buildOrder, makeCountingSource } from '../../helpers/countingSource.ts'
@@ -330,7 +331,7 @@ describe('bench:simulate', () => {
     const source = makeModelledSource({ seed: 1, channelKind: 'one', circuit: 'buffered' })
     startClient(source)
     await connected()
-    const place = { kind: 'place', seed: 77, faults: [], scatterDb: 1 } as const
+    const place: SimulationCommand = { kind: 'place', seed: 77, faults: [], scatterDb: 1 }
     expect(await server.socket().emitWithAck('bench:simulate', place)).toEqual({ ok: true })
     expect(source.parts.seed).toBe(77)
     const raw = server.socket() as unknown as {
