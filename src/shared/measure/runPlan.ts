@@ -99,7 +99,7 @@ function phasesOf(setup: RunSetup): RunPhase[] {
   return phases
 }
 
-/** Whether a rule is one of the sheet's, for a rule that the plan leaves out. */
+/** The sheet's rule of that name; undefined when the sheet does not hold it. */
 export function sheetRuleOf(setup: Pick<RunSetup, 'sheet'>, rule: RuleId): SheetRule | undefined {
   return setup.sheet.rules.find((r) => r.rule === rule)
 }
