@@ -1,6 +1,6 @@
 import { spawn } from 'node:child_process'
 import path from 'node:path'
-import { expect } from 'vitest'
+import { vi } from 'vitest'
 import type { TestPerson } from './runningServer.ts'
 
 /** The real bench program as a process of its own; end it with the function that comes back. */
@@ -14,17 +14,13 @@ export function startSimulator(url: string, token: string, args: string[]): () =
 }
 
 /** Waits until the bench of that name is connected and has verified itself, and gives its id. */
-export async function benchReady(person: TestPerson, name: string): Promise<string> {
-  let id = ''
-  await expect
-    .poll(
-      async () => {
-        const bench = (await person.call('benches.list')).items.find((item) => item.name === name)
-        id = bench?.id ?? ''
-        return bench?.connected && bench.verified
-      },
-      { timeout: 30_000, interval: 100 },
-    )
-    .toBe(true)
-  return id
+export function benchReady(person: TestPerson, name: string): Promise<string> {
+  return vi.waitFor(
+    async () => {
+      const bench = (await person.call('benches.list')).items.find((item) => item.name === name)
+      if (!bench?.connected || !bench.verified) throw new Error(`bench ${name} is not ready yet`)
+      return bench.id
+    },
+    { timeout: 30_000, interval: 100 },
+  )
 }
