@@ -5,12 +5,11 @@ import type { Namespace } from 'socket.io'
 import { BenchHello, BenchVerify, FrameBatch, PROTOCOL_VERSION } from '../../src/shared/contract/frames.ts'
 import type { BenchToServer, ServerToBench } from '../../src/shared/contract/frames.ts'
 import { AppError, problemOf } from '../errors.ts'
-import { measuredOf } from '../runs/openRun.ts'
 import type { RunBoard } from '../runs/runBoard.ts'
 import { answering } from './answering.ts'
 import { orderOf, WINDOW_FRAMES } from './benchHub.ts'
 import type { BenchHub, BenchSocket } from './benchHub.ts'
-import { findBenchByToken, findVerification, touchBench } from './bench.queries.ts'
+import { findBenchByToken, findCalibration, findVerification, touchBench } from './bench.queries.ts'
 import { verifyFromBench } from './verifyFromBench.ts'
 
 export interface BenchGatewayDeps {
@@ -67,7 +66,7 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
       greeted = true
       const run = board.onBench(benchId)
       board.benchChanged(benchId)
-      if (run) queueMicrotask(() => hub.prompt(run, measuredOf(run)))
+      if (run) queueMicrotask(() => hub.prompt(run))
       return {
         benchId,
         name: bench.name,
@@ -92,17 +91,21 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
     })
 
     on('bench:verify', BenchVerify, async (measured) => {
-      if (!greeted) throw new AppError('protocol.hello-first')
-      const answer = await verifyFromBench(knex, benchId, measured, now())
+      const hello = hub.helloOf(benchId)
+      if (!hello) throw new AppError('protocol.hello-first')
+      const { channelKind, capabilities } = hello
+      const calibrationDb = await findCalibration(knex, benchId)
+      const bench = { id: benchId, channelKind, capabilities, calibrationDb }
+      const answer = await verifyFromBench(knex, bench, measured, now())
       hub.events.emit('changed', benchId)
       return answer
     })
   })
 
   hub.events.on('changed', (benchId) => board.benchChanged(benchId))
-  board.events.on('changed', (run, measured) => hub.prompt(run, measured))
+  board.events.on('changed', (run) => hub.prompt(run))
   board.events.on('committed', (run) => hub.committed(run))
-  board.events.on('ended', (run, measured) => hub.ended(run, measured))
+  board.events.on('ended', (run) => hub.ended(run))
 }
 
 async function identify(knex: Knex, auth: unknown): Promise<string> {

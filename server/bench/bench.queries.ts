@@ -1,9 +1,12 @@
 import type { Knex } from 'knex'
+import { z } from 'zod'
 import type { BenchHello, BenchVerify } from '../../src/shared/contract/frames.ts'
+import { fromJson } from '../runs/runs.queries.ts'
 
 export async function findBenchByToken(knex: Knex, tokenHash: Buffer): Promise<string | null> {
-  const row = (await knex('benches').where({ token_hash: tokenHash, retired_at: null }).first('id')) as
-    { id: string } | undefined
+  const row = await knex('benches')
+    .where({ token_hash: tokenHash, retired_at: null })
+    .first<{ id: string } | undefined>('id')
   return row?.id ?? null
 }
 
@@ -22,11 +25,19 @@ export async function touchBench(
       capabilities: JSON.stringify(hello.capabilities),
       last_connected_at: at,
     })
-  const row = (await knex('benches').where({ id: benchId }).first('name', 'simulated')) as {
+  const row = await knex('benches').where({ id: benchId }).first<{
     name: string
     simulated: number
-  }
+  }>('name', 'simulated')
   return { name: row.name, simulated: Boolean(row.simulated) }
+}
+
+/** dB to add to each channel's level. */
+export async function findCalibration(knex: Knex, benchId: string): Promise<number[]> {
+  const row = await knex('benches')
+    .where({ id: benchId })
+    .first<{ calibration_db: unknown }>('calibration_db')
+  return z.array(z.number()).parse(fromJson(row.calibration_db))
 }
 
 /** The newest verification, when it passed and still holds. */
@@ -35,10 +46,10 @@ export async function findVerification(
   benchId: string,
   at: Date,
 ): Promise<{ id: string; validUntil: Date } | null> {
-  const newest = (await knex('bench_verifications')
+  const newest = await knex('bench_verifications')
     .where({ bench_id: benchId })
     .orderBy('at', 'desc')
-    .first()) as { id: string; passed: number; valid_until: Date | null } | undefined
+    .first<{ id: string; passed: number; valid_until: Date | null } | undefined>()
   if (!newest?.passed || !newest.valid_until || newest.valid_until <= at) return null
   return { id: newest.id, validUntil: newest.valid_until }
 }
@@ -47,8 +58,9 @@ export async function findVerificationById(
   knex: Knex,
   id: string,
 ): Promise<{ passed: boolean; validUntil: Date | null; reasons: unknown } | null> {
-  const row = (await knex('bench_verifications').where({ id }).first()) as
-    { passed: number; valid_until: Date | null; reasons: unknown } | undefined
+  const row = await knex('bench_verifications')
+    .where({ id })
+    .first<{ passed: number; valid_until: Date | null; reasons: unknown } | undefined>()
   return row ? { passed: Boolean(row.passed), validUntil: row.valid_until, reasons: row.reasons } : null
 }
 

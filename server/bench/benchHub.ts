@@ -8,10 +8,9 @@ import type {
   ServerToBench,
 } from '../../src/shared/contract/frames.ts'
 import type { SimulationCommand } from '../../src/shared/contract/simulation.ts'
+import { noiseStretchMsOf } from '../../src/shared/measure/runState.ts'
 import { AppError, problemOf } from '../errors.ts'
-import { measuredOf } from '../runs/openRun.ts'
 import type { OpenRun } from '../runs/openRun.ts'
-import type { MeasuredRun } from '../../src/shared/contract/measured.ts'
 
 export type BenchSocket = Socket<BenchToServer, ServerToBench, Record<string, never>, { benchId: string }>
 
@@ -64,16 +63,13 @@ export class BenchHub {
 
   startRun(run: OpenRun): void {
     this.connections.get(run.row.benchId)?.socket.emit('run:start', orderOf(run))
-    this.prompt(run, measuredOf(run))
+    this.prompt(run)
   }
 
-  prompt(run: OpenRun, measured: MeasuredRun): void {
-    const message: RunPrompt = {
-      run: run.row.id,
-      phase: measured.phase,
-      prompt: measured.prompt,
-      stringNo: measured.promptStringNo,
-    }
+  /** What the bench may show, or its automatic hand follows; sent when it changes. */
+  prompt(run: OpenRun): void {
+    const { prompt, stringNo } = run.method.promptOf(run.state)
+    const message: RunPrompt = { run: run.row.id, phase: run.method.phaseOf(run.state), prompt, stringNo }
     const key = JSON.stringify(message)
     if (this.prompts.get(run.row.benchId) === key) return
     const socket = this.connections.get(run.row.benchId)?.socket
@@ -88,12 +84,12 @@ export class BenchHub {
       ?.socket.emit('run:committed', { run: run.row.id, committed: run.committed })
   }
 
-  ended(run: OpenRun, measured: MeasuredRun): void {
+  ended(run: OpenRun): void {
     this.prompts.delete(run.row.benchId)
     this.connections.get(run.row.benchId)?.socket.emit('run:ended', {
       run: run.row.id,
       outcome: run.ending?.status ?? 'interrupted',
-      verdict: measured.verdict,
+      verdict: run.measured.verdict,
     })
     this.events.emit('changed', run.row.benchId)
   }
@@ -123,7 +119,7 @@ export function orderOf(run: OpenRun): RunOrder {
     serial: run.row.serial,
     from: run.next,
     window: WINDOW_FRAMES,
-    noiseStretchMs: setup.sheet.noiseStretchMs,
+    noiseStretchMs: noiseStretchMsOf(setup),
     expectedHz: setup.model.tuning.map((pitch) => pitch.pitchesHz),
     circuit: setup.model.circuit,
   }

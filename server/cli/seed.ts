@@ -101,7 +101,7 @@ export async function seedDemo(
   const accounts = DEMO_PEOPLE.map((person) => ({
     email: person.email,
     password,
-    roles: person.roles as string[],
+    roles: person.roles,
   }))
   return { benchTokens, accounts }
 }

@@ -2,7 +2,6 @@ import type { Logger } from 'pino'
 import type { Namespace, Socket } from 'socket.io'
 import { WatchBenches, WatchRun } from '../../src/shared/contract/live.ts'
 import type { ScreenToServer, ServerToScreen } from '../../src/shared/contract/live.ts'
-import type { MeasuredRun } from '../../src/shared/contract/measured.ts'
 import type { RunView } from '../../src/shared/contract/runs.ts'
 import type { BenchView } from '../../src/shared/contract/workshop.ts'
 import { requireAccess } from '../auth/requireAccess.ts'
@@ -12,7 +11,7 @@ import type { BenchHub } from '../bench/benchHub.ts'
 import type { Config } from '../config.ts'
 import { AppError, problemOf } from '../errors.ts'
 import { isOwnOrigin } from '../http/origin.ts'
-import { takeLevels } from '../runs/openRun.ts'
+import { measuredOf, takeLevels } from '../runs/openRun.ts'
 import type { OpenRun } from '../runs/openRun.ts'
 import type { RunBoard } from '../runs/runBoard.ts'
 import { viewOfOpenRun } from '../runs/runView.ts'
@@ -67,6 +66,8 @@ export function openLiveGateway(namespace: LiveNamespace, deps: LiveGatewayDeps)
     on('watch:run', WatchRun, async ({ run }) => {
       await allowed()
       const view = await deps.readRun(run)
+      // What the first of a room was sent as a whole is not told again piece by piece.
+      if (!namespace.adapter.rooms.has(runRoom(run))) told.set(run, view.measured.plucks.length)
       await socket.join(runRoom(run))
       return { view }
     })
@@ -88,47 +89,49 @@ export function openLiveGateway(namespace: LiveNamespace, deps: LiveGatewayDeps)
   })
 
   const watched = (run: OpenRun) => (namespace.adapter.rooms.get(runRoom(run.row.id))?.size ?? 0) > 0
-  const due = new Map<string, { measured: MeasuredRun; timer: NodeJS.Timeout | null }>()
-  const publish = (run: OpenRun, measured: MeasuredRun) => {
-    namespace
-      .to(runRoom(run.row.id))
-      .emit('run:view', viewOfOpenRun(run, measured, hub.isConnected(run.row.benchId)))
+  /** runs whose last view is younger than VIEW_EVERY_MS; true: something changed since */
+  const due = new Map<string, boolean>()
+  /** plucks that the run's room was told of */
+  const told = new Map<string, number>()
+
+  const publish = (run: OpenRun) => {
+    const view = viewOfOpenRun(run, measuredOf(run), hub.isConnected(run.row.benchId))
+    const room = namespace.to(runRoom(run.row.id))
+    for (const pluck of view.measured.plucks.slice(told.get(run.row.id) ?? 0))
+      room.emit('run:pluck', { run: run.row.id, stringNo: pluck.stringNo, pluck })
+    told.set(run.row.id, view.measured.plucks.length)
+    room.emit('run:view', view)
   }
 
-  const plucks = new Map<string, number>()
-  board.events.on('changed', (run, measured) => {
+  const publishSoon = (run: OpenRun) => {
     const id = run.row.id
-    const told = plucks.get(id) ?? 0
-    plucks.set(id, measured.plucks.length)
-    if (!watched(run)) return
-    for (const pluck of measured.plucks.slice(told))
-      namespace.to(runRoom(id)).emit('run:pluck', { run: id, stringNo: pluck.stringNo, pluck })
-    const waiting = due.get(id)
-    if (waiting) {
-      waiting.measured = measured
+    if (due.has(id)) {
+      due.set(id, true)
       return
     }
-    publish(run, measured)
-    const entry = { measured, timer: null as NodeJS.Timeout | null }
-    entry.timer = setTimeout(() => {
+    publish(run)
+    due.set(id, false)
+    setTimeout(() => {
+      const changed = due.get(id)
       due.delete(id)
-      if (entry.measured !== measured) publish(run, entry.measured)
-    }, VIEW_EVERY_MS)
-    due.set(id, entry)
+      if (changed) publishSoon(run)
+    }, VIEW_EVERY_MS).unref()
+  }
+
+  board.events.on('changed', (run) => {
+    if (watched(run)) publishSoon(run)
   })
   board.events.on('levels', (run) => {
     const levels = takeLevels(run)
     if (levels && watched(run)) namespace.to(runRoom(run.row.id)).volatile.emit('run:levels', levels)
   })
-  board.events.on('ended', (run, measured) => {
-    const waiting = due.get(run.row.id)
-    if (waiting?.timer) clearTimeout(waiting.timer)
+  board.events.on('ended', (run) => {
     due.delete(run.row.id)
-    plucks.delete(run.row.id)
-    publish(run, measured)
+    publish(run)
+    told.delete(run.row.id)
+    announceBench(run.row.benchId)
   })
   hub.events.on('changed', (benchId) => announceBench(benchId))
-  board.events.on('ended', (run) => announceBench(run.row.benchId))
 
   function announceBench(benchId: string): void {
     if (!namespace.adapter.rooms.has(BENCHES_ROOM)) return

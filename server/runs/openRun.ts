@@ -36,6 +36,8 @@ export interface OpenRun {
   lastHeardMs: number
   /** the view that was worked out last */
   measured: MeasuredRun
+  /** change count that it shows */
+  measuredAt: number
   /** measuring threw: frames are kept all the same, the run ends without a verdict */
   fault: Error | null
   levels: Levels
@@ -62,6 +64,7 @@ export function openRunOf(row: RunRow, nowMs: number): OpenRun {
     method,
     state,
     measured: method.viewRun(state),
+    measuredAt: method.changeCount(state),
     fault: null,
     next: 0,
     buffer: new TraceBuffer(channels),
@@ -80,10 +83,15 @@ export function openRunOf(row: RunRow, nowMs: number): OpenRun {
   }
 }
 
-/** Everything measured so far; should working it out fail, the view before it, and the run is marked as faulty. */
+/**
+ * Everything measured so far; should working it out fail, the view before it, and the run is marked as faulty;
+ * once the run has ended, what was judged then.
+ */
 export function measuredOf(run: OpenRun): MeasuredRun {
-  if (run.fault) return run.measured
+  const isSame = run.measured.frames === run.next && run.measuredAt === run.method.changeCount(run.state)
+  if (run.fault || run.ending || isSame) return run.measured
   try {
+    run.measuredAt = run.method.changeCount(run.state)
     run.measured = run.method.viewRun(run.state)
   } catch (error) {
     run.fault = error instanceof Error ? error : new Error(String(error))

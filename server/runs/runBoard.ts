@@ -43,10 +43,10 @@ export interface RunBoardDeps {
 /** What others are told of; a listener never delays or breaks the run. */
 export interface RunBoardEvents {
   /** something changed that a screen or the bench's display shows */
-  changed: [OpenRun, MeasuredRun]
+  changed: [OpenRun]
   levels: [OpenRun]
   committed: [OpenRun]
-  ended: [OpenRun, MeasuredRun]
+  ended: [OpenRun]
 }
 
 export type Actor = { id: string; name: string; mayStopAny: boolean }
@@ -167,7 +167,7 @@ export class RunBoard {
   /** The bench came or went: whoever looks at its run is told. */
   benchChanged(benchId: string): void {
     const run = this.byBench.get(benchId)
-    if (run) this.events.emit('changed', run, measuredOf(run))
+    if (run) this.events.emit('changed', run)
   }
 
   /** Waits for what is being stored; open runs stay open in the database and are restored at the next start. */
@@ -222,11 +222,10 @@ export class RunBoard {
     run.actions.push(action)
     if (run.waiting.length > 0 || action.frame > run.next) run.waiting.push(action)
     else run.method.takeAction(run.state, action)
-    const measured = measuredOf(run)
-    this.events.emit('changed', run, measured)
+    this.events.emit('changed', run)
     if (action.action.kind === 'stop') this.end(run, 'stopped', action.action.reason)
     else this.endWhenFinished(run)
-    return measured
+    return measuredOf(run)
   }
 
   private announce(run: OpenRun): void {
@@ -240,7 +239,7 @@ export class RunBoard {
     const change = run.method.changeCount(run.state)
     if (change !== shown.change) {
       shown.change = change
-      this.events.emit('changed', run, measuredOf(run))
+      this.events.emit('changed', run)
     }
   }
 
@@ -286,18 +285,20 @@ export class RunBoard {
       run.measured = run.method.viewRun(run.method.startRun(run.row.setup))
     }
     run.ending = shape.success ? { status, reason } : { status: 'interrupted', reason: MEASURING_FAILED }
-    this.events.emit('changed', run, run.measured)
-    void run.storing.add(() => this.seal(run, run.measured))
+    this.events.emit('changed', run)
+    void run.storing.add(() => this.seal(run))
   }
 
-  private async seal(run: OpenRun, measured: MeasuredRun): Promise<void> {
-    const stored = await this.untilStored(run, () => sealRun(this.deps.knex, run, measured, this.deps.now()))
+  private async seal(run: OpenRun): Promise<void> {
+    const stored = await this.untilStored(run, () =>
+      sealRun(this.deps.knex, run, run.measured, this.deps.now()),
+    )
     if (!stored) return
     run.storage = 'stored'
     run.committed = run.next
     this.runs.delete(run.row.id)
     if (this.byBench.get(run.row.benchId) === run) this.byBench.delete(run.row.benchId)
-    this.events.emit('ended', run, measured)
+    this.events.emit('ended', run)
   }
 
   /**

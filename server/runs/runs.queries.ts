@@ -116,15 +116,12 @@ function runs(knex: Knex): Knex.QueryBuilder {
 }
 
 export async function findRun(knex: Knex, id: string): Promise<RunRow | null> {
-  const raw = (await runs(knex).where('runs.id', id).first(RUN_COLUMNS)) as RawRun | undefined
+  const raw = await runs(knex).where('runs.id', id).first<RawRun | undefined>(RUN_COLUMNS)
   return raw ? toRun(raw) : null
 }
 
 export async function findOpenRuns(knex: Knex): Promise<RunRow[]> {
-  const rows = (await runs(knex)
-    .where('runs.status', 'open')
-    .orderBy('runs.seq')
-    .select(RUN_COLUMNS)) as RawRun[]
+  const rows = await runs(knex).where('runs.status', 'open').orderBy('runs.seq').select<RawRun[]>(RUN_COLUMNS)
   return rows.map(toRun)
 }
 

@@ -33,10 +33,10 @@ export async function findBenchSetup(knex: Knex, benchId: string, at: Date): Pro
       }
     | undefined
   if (!bench) return null
-  const newest = (await knex('bench_verifications')
+  const newest = await knex('bench_verifications')
     .where({ bench_id: benchId })
     .orderBy('at', 'desc')
-    .first()) as { id: string; passed: number; valid_until: Date | null; floor_db: unknown } | undefined
+    .first<{ id: string; passed: number; valid_until: Date | null; floor_db: unknown } | undefined>()
   const holds = newest?.passed && newest.valid_until && newest.valid_until > at
   return {
     name: bench.name,
@@ -51,17 +51,17 @@ export async function findBenchSetup(knex: Knex, benchId: string, at: Date): Pro
 
 /** The model of a known serial, or for a new one the model that was chosen. */
 export async function findStartModel(knex: Knex, serial: string, modelId: string | null): Promise<Model> {
-  const known = (await knex('instruments')
+  const known = await knex('instruments')
     .join('models', 'models.id', 'instruments.model_id')
     .where('instruments.serial', serial)
-    .first('models.*')) as RawModel | undefined
+    .first<RawModel | undefined>('models.*')
   if (known) {
     if (modelId && modelId !== known.id)
       throw new AppError('instrument.model-differs', { facts: { model: known.name } })
     return modelOf(known)
   }
   if (!modelId) throw new AppError('instrument.unknown', { facts: { serial } })
-  const chosen = (await knex('models').where({ id: modelId }).first()) as RawModel | undefined
+  const chosen = await knex('models').where({ id: modelId }).first<RawModel | undefined>()
   if (!chosen) throw new AppError('model.unknown')
   return modelOf(chosen)
 }
@@ -72,12 +72,12 @@ export async function findSheetInForce(
   modelId: string,
   at: Date,
 ): Promise<ThresholdSheet | null> {
-  const row = (await knex('threshold_revisions')
+  const row = await knex('threshold_revisions')
     .where({ model_id: modelId, status: 'inForce' })
     .where('in_force_from', '<=', at)
     .orderBy('in_force_from', 'desc')
     .orderBy('revision', 'desc')
-    .first('sheet')) as { sheet: unknown } | undefined
+    .first<{ sheet: unknown } | undefined>('sheet')
   return row ? ThresholdSheet.parse(fromJson(row.sheet)) : null
 }
 
@@ -87,13 +87,13 @@ export async function findOrInsertInstrument(
   modelId: string,
   at: Date,
 ): Promise<string> {
-  const known = (await trx('instruments').where({ serial }).first('id')) as { id: string } | undefined
+  const known = await trx('instruments').where({ serial }).first<{ id: string } | undefined>('id')
   if (known) return known.id
   const id = randomUUID()
   await trx('instruments')
     .insert({ id, serial, serial_folded: foldedSerial(serial), model_id: modelId, created_at: at })
     .onConflict('serial')
     .ignore()
-  const row = (await trx('instruments').where({ serial }).first('id')) as { id: string }
+  const row = await trx('instruments').where({ serial }).first<{ id: string }>('id')
   return row.id
 }

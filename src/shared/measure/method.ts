@@ -1,9 +1,11 @@
 import type { BenchEvent, Frame } from '../contract/frames.ts'
-import type { MeasuredRun } from '../contract/measured.ts'
+import type { MeasuredRun, PromptKey, RunPhase } from '../contract/measured.ts'
 import type { RunAction, RunActionBody, RunSetup } from '../contract/runs.ts'
 import {
   changeCount,
   isFinished,
+  phaseOf,
+  promptOf,
   refusalOf,
   startRun,
   takeAction,
@@ -28,9 +30,22 @@ export interface MethodCode {
   /** grows with every change that a screen shows */
   changeCount(state: RunState): number
   isFinished(state: RunState): boolean
+  phaseOf(state: RunState): RunPhase
+  /** what is asked for now, without working out the whole view */
+  promptOf(state: RunState): { prompt: PromptKey; stringNo: number | null }
 }
 
 /** Every method that a stored run can name. A new method gets a new entry; the old code stays callable. */
 export const methods: Record<number, MethodCode> = {
-  1: { startRun, takeFrame, takeAction, viewRun, refusalOf, changeCount, isFinished },
+  1: {
+    startRun,
+    takeFrame,
+    takeAction,
+    viewRun,
+    refusalOf,
+    changeCount,
+    isFinished,
+    phaseOf,
+    promptOf,
+  },
 }
