@@ -66,7 +66,7 @@ function sentence(result: RuleResult, view: RunView, level: LevelUnit): string {
   const state = STATE_SENTENCES[result.rule]
   if (state) return state
   const { value, low, high, unit } = result
-  if (value === null) return `${subject} is outside`
+  if (value === null) return `${subject} is outside${result.why ? `: ${WHYS[result.why]}` : ''}`
   if (result.rule === 'balance' && which) return balanceSentence(upperFirst(which), result)
   if (result.rule === 'disturbanceCount') {
     return `The contact broke ${formatValue(value, unit)} ${value === 1 ? 'time' : 'times'} in the wiggle, limit ${formatValue(high, unit)}`

@@ -5,6 +5,8 @@ import { DROP_REASONS } from '../texts.ts'
 export interface BenchNotice {
   text: string
   tone: 'quiet' | 'attention'
+  /** the answer to something that the person just did, so that it goes before all else */
+  isAnswer?: boolean
 }
 
 /** How long a line stands before the hint comes back. */
@@ -39,7 +41,7 @@ export function useBenchNotice(
   let timer: ReturnType<typeof setTimeout> | undefined
   const notice = computed<BenchNotice | null>(() => {
     if (shown.value === null) return null
-    if (typeof shown.value === 'string') return { text: shown.value, tone: 'attention' }
+    if (typeof shown.value === 'string') return { text: shown.value, tone: 'attention', isAnswer: true }
     return pluckNotice(shown.value, word(), countOf)
   })
 
