@@ -4,10 +4,19 @@ import { toApiProblem, type ApiProblem } from '../api/apiProblem.ts'
 import { api } from '../api/http.ts'
 import type { FaultId, SimulationCommand } from '../shared/contract/simulation.ts'
 
+interface Placed {
+  fault: FaultId | 'none'
+  /** for a fault that sits under one string */
+  stringNo: number
+  severity: number
+  seed: number
+  scatterDb: number
+}
+
 /** What lies on a simulated bench and whether its hand is on: it outlasts the step from the start to the run. */
 export const useSimulationStore = defineStore('simulation', () => {
-  const placed = reactive({
-    fault: 'none' as FaultId | 'none',
+  const placed = reactive<Placed>({
+    fault: 'none',
     stringNo: 4,
     severity: 1,
     seed: 1,

@@ -59,7 +59,7 @@ beforeEach(() => {
       repeat: () => calls.push('repeat'),
       stop: () => calls.push('stop'),
       cancel: () => calls.push('cancel'),
-      digit: (digit) => calls.push(`digit ${digit}`),
+      digit: (digit: number) => calls.push(`digit ${digit}`),
       enabled,
     }
     holdProgress = useBenchKeys(actions, window, () => performance.now()).holdProgress

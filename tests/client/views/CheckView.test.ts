@@ -15,11 +15,12 @@ import CheckView from '../../../src/views/CheckView.vue'
 import { IDS, aModel, aSetup, aSheet } from '../../fixtures/runParts.ts'
 import { liveAt, sealedFail, sealedPass, stoppedRun } from '../../fixtures/runViews.ts'
 
-const outside = vi.hoisted(() => ({
-  answers: {} as Record<string, () => unknown>,
-  calls: [] as { key: string; parts: { body?: unknown } }[],
-  handlers: null as unknown,
-}))
+interface Outside {
+  answers: Record<string, () => unknown>
+  calls: { key: string; parts: { body?: unknown } }[]
+  handlers: unknown
+}
+const outside = vi.hoisted((): Outside => ({ answers: {}, calls: [], handlers: null }))
 vi.mock('../../../src/api/http.ts', () => ({
   api: (key: string, parts: { body?: unknown } = {}) => {
     outside.calls.push({ key, parts })

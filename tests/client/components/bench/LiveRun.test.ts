@@ -1,6 +1,6 @@
 import { mount, type VueWrapper } from '@vue/test-utils'
 import { createPinia, setActivePinia } from 'pinia'
-import { afterEach, beforeEach, describe, expect, test, vi } from 'vitest'
+import { afterEach, beforeEach, describe, expect, test, vi, type Mock } from 'vitest'
 import { nextTick } from 'vue'
 import { ApiProblem } from '../../../../src/api/apiProblem.ts'
 import type { RunHandlers } from '../../../../src/api/socket.ts'
@@ -10,11 +10,12 @@ import type { RunActionBody, RunView } from '../../../../src/shared/contract/run
 import { useLiveStore } from '../../../../src/stores/live.ts'
 import { benchSilent, judgedNotStored, liveAt, liveWithLowString } from '../../../fixtures/runViews.ts'
 
-const outside = vi.hoisted(() => ({
-  api: vi.fn<(key: string, parts: { body: { action: unknown } }) => Promise<unknown>>(),
-  handlers: null as unknown,
-  state: null as unknown as { value: string },
-}))
+interface Outside {
+  api: Mock<(key: string, parts: { body: { action: unknown } }) => Promise<unknown>>
+  handlers: unknown
+  state: { value: string }
+}
+const outside = vi.hoisted((): Outside => ({ api: vi.fn(), handlers: null, state: { value: '' } }))
 vi.mock('../../../../src/api/http.ts', () => ({
   api: outside.api,
   http: { onSession: () => () => undefined },
