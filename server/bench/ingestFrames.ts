@@ -1,8 +1,8 @@
 import type { BenchEvent, Frame, FrameBatch } from '../../src/shared/contract/frames.ts'
+import { applyStored, eventsByFrame } from '../../src/shared/measure/replayStored.ts'
 import { AppError } from '../errors.ts'
 import { channelsOf, noteLevels } from '../runs/openRun.ts'
 import type { OpenRun } from '../runs/openRun.ts'
-import { applyStored, byFrame } from '../runs/replayRun.ts'
 
 const NO_EVENTS: readonly BenchEvent[] = []
 
@@ -23,7 +23,7 @@ export function ingestFrames(run: OpenRun, batch: FrameBatch): number {
     throw new AppError('storage.away', { facts: { next: run.next, committed: run.committed } })
   checkShape(run, batch)
 
-  const events = byFrame(batch.events)
+  const events = eventsByFrame(batch.events)
   const end = batch.from + batch.frames.length
   let taken = 0
   for (let frameNo = run.next; frameNo < end; frameNo++) {

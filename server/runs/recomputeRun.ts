@@ -2,11 +2,11 @@ import type { Knex } from 'knex'
 import { MeasuredRun } from '../../src/shared/contract/measured.ts'
 import type { RecomputeReport } from '../../src/shared/contract/runs.ts'
 import { methods } from '../../src/shared/measure/method.ts'
-import { replayRun } from './replayRun.ts'
+import { replayStored } from '../../src/shared/measure/replayStored.ts'
 import { findActions, findSegments } from './runs.queries.ts'
 import type { RunRow } from './runs.queries.ts'
 import { RUNTIME } from './runtime.ts'
-import { unpackSegment } from './traceSegment.ts'
+import { unpackTrace } from './traceSegment.ts'
 
 const MOST_DIFFERENCES = 20
 
@@ -25,8 +25,9 @@ export async function recomputeRun(knex: Knex, row: RunRow): Promise<RecomputeRe
   try {
     const segments = await findSegments(knex, row.seq)
     const actions = await findActions(knex, row.seq)
-    const replayed = replayRun(row.setup, segments.map(unpackSegment), actions, true)
-    const view = methods[row.setup.method]!.viewRun(replayed.state)
+    const { frames, events } = unpackTrace(segments)
+    const { state } = replayStored(row.setup, frames, events, actions, true)
+    const view = methods[row.setup.method]!.viewRun(state)
     const again = MeasuredRun.parse(JSON.parse(JSON.stringify(view)))
     report.sameVerdict = again.verdict === row.measured.verdict && (again.verdict ?? 'none') === row.verdict
     report.largestDifference = compare(row.measured, again, '', report.differences)

@@ -6,6 +6,7 @@ import type { FrameBatch } from '../../src/shared/contract/frames.ts'
 import { LIVE_UPDATES_PER_SECOND } from '../../src/shared/contract/live.ts'
 import { MeasuredRun } from '../../src/shared/contract/measured.ts'
 import type { RunAction, RunActionBody } from '../../src/shared/contract/runs.ts'
+import { replayStored } from '../../src/shared/measure/replayStored.ts'
 import { insertAudit } from '../audit/audit.queries.ts'
 import { ingestFrames } from '../bench/ingestFrames.ts'
 import { sealRun } from '../bench/sealRun.ts'
@@ -13,7 +14,6 @@ import { isDuplicate, isStorageAway } from '../connect.ts'
 import { AppError } from '../errors.ts'
 import { measuredOf, openRunOf } from './openRun.ts'
 import type { OpenRun } from './openRun.ts'
-import { replayRun } from './replayRun.ts'
 import {
   deleteOtherActions,
   findActions,
@@ -24,7 +24,7 @@ import {
   updateOpener,
 } from './runs.queries.ts'
 import type { RunRow } from './runs.queries.ts'
-import { unpackSegment } from './traceSegment.ts'
+import { unpackTrace } from './traceSegment.ts'
 
 /** A segment of the trace is committed when this much run time has come in. */
 export const SEGMENT_MS = 30_000
@@ -89,7 +89,8 @@ export class RunBoard {
       const segments = await findSegments(this.deps.knex, row.seq)
       const actions = await findActions(this.deps.knex, row.seq)
       const run = openRunOf(row, this.deps.now().getTime())
-      const replayed = replayRun(row.setup, segments.map(unpackSegment), actions, false)
+      const { frames, events } = unpackTrace(segments)
+      const replayed = replayStored(row.setup, frames, events, actions, false)
       Object.assign(run, {
         state: replayed.state,
         next: replayed.frames,

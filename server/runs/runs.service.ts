@@ -29,7 +29,7 @@ import {
   findStartModel,
 } from './startRun.queries.ts'
 import { thinTrace } from './thinTrace.ts'
-import { unpackSegment } from './traceSegment.ts'
+import { unpackTrace } from './traceSegment.ts'
 
 export interface RunsDeps {
   knex: Knex
@@ -164,7 +164,7 @@ export function createRunsService(deps: RunsDeps) {
       const row = await findRun(knex, id)
       if (!row) throw new AppError('run.unknown')
       const segments = await findSegments(knex, row.seq)
-      const frames = segments.flatMap((segment) => unpackSegment(segment).frames)
+      const { frames } = unpackTrace(segments)
       const open = board.find(id)
       if (open) frames.push(...open.buffer.read().frames.slice(Math.max(0, frames.length - open.committed)))
       return {

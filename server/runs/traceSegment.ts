@@ -142,6 +142,21 @@ export function unpackSegment(segment: StoredSegment): TraceStretch {
   return { frames, events: head.events }
 }
 
+/** The whole trace of a run; throws when a segment is missing or its bytes were changed. */
+export function unpackTrace(segments: readonly StoredSegment[]): TraceStretch {
+  const trace: TraceStretch = { frames: [], events: [] }
+  for (const segment of segments) {
+    if (segment.fromFrame !== trace.frames.length)
+      throw new Error(
+        `the trace has no frame ${trace.frames.length}: a segment before number ${segment.no} is missing`,
+      )
+    const stretch = unpackSegment(segment)
+    for (const frame of stretch.frames) trace.frames.push(frame)
+    for (const event of stretch.events) trace.events.push(event)
+  }
+  return trace
+}
+
 function fromTri(state: boolean | null): number {
   return state === null ? 2 : state ? 1 : 0
 }

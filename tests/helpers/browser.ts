@@ -92,9 +92,9 @@ interface AxeResult {
 /** Serious and critical findings of axe on the page as it stands (WCAG 2.2 A and AA). */
 export async function seriousFindings(page: Page): Promise<string[]> {
   await page.evaluate(axeSource)
-  const result = (await page.evaluate(
+  const result = await page.evaluate<AxeResult>(
     `axe.run(document, { runOnly: ['wcag2a', 'wcag2aa', 'wcag21a', 'wcag21aa', 'wcag22aa'] })`,
-  )) as AxeResult
+  )
   return result.violations
     .filter((violation) => violation.impact === 'serious' || violation.impact === 'critical')
     .map(

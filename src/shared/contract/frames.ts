@@ -2,7 +2,7 @@ import { z } from 'zod'
 import { Id, Instant, LevelMdb, StringNo } from './quantities.ts'
 import { Capability } from './rules.ts'
 import { RunPhase, PromptKey } from './measured.ts'
-import { SimulationCommand } from './simulation.ts'
+import type { SimulationCommand } from './simulation.ts'
 import type { Problem } from './errors.ts'
 
 /** Bench protocol, namespace /bench, websocket only. DEVELOPERS.md describes it for someone with real hardware. */

@@ -1,8 +1,8 @@
 import { z } from 'zod'
 import { Id, LevelMdb, StringNo } from './quantities.ts'
 import { Pluck } from './measured.ts'
-import { RunView } from './runs.ts'
-import { BenchView } from './workshop.ts'
+import type { RunView } from './runs.ts'
+import type { BenchView } from './workshop.ts'
 import type { Problem } from './errors.ts'
 
 /** Screens, namespace /live, websocket only, with the sign-in's cookie. */

@@ -1,5 +1,5 @@
 import { z } from 'zod'
-import { Unit } from './quantities.ts'
+import type { Unit } from './quantities.ts'
 
 export const RuleId = z.enum([
   'speaks',

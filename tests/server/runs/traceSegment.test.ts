@@ -2,7 +2,7 @@ import { createHash } from 'node:crypto'
 import fc from 'fast-check'
 import { expect, test } from 'vitest'
 import { TraceBuffer } from '../../../server/runs/traceBuffer.ts'
-import { unpackSegment } from '../../../server/runs/traceSegment.ts'
+import { unpackSegment, unpackTrace } from '../../../server/runs/traceSegment.ts'
 import type { BenchEvent, Frame } from '../../../src/shared/contract/frames.ts'
 import { NOT_MEASURED_MDB, SILENCE_MDB } from '../../../src/shared/contract/quantities.ts'
 
@@ -86,4 +86,17 @@ test('packing the same frames again gives the same bytes', () => {
   const list = fc.sample(frames(6), { seed: 11, numRuns: 1 })[0]!
   const buffer = filled(6, list)
   expect(buffer.pack(0, 0, list.length).data.equals(buffer.pack(0, 0, list.length).data)).toBe(true)
+})
+
+test('unpackTrace() joins segments in order and refuses a trace with a hole', () => {
+  const list = fc.sample(frames(6), { seed: 5, numRuns: 1 })[0]!
+  const buffer = filled(6, [...list, ...list, ...list])
+  const n = list.length
+  const first = buffer.pack(0, 0, n)
+  buffer.drop(n, n)
+  const second = buffer.pack(1, n, n)
+  buffer.drop(n, 2 * n)
+  const third = buffer.pack(2, 2 * n, n)
+  expect(unpackTrace([first, second, third]).frames).toEqual([...list, ...list, ...list])
+  expect(() => unpackTrace([first, third])).toThrow(/has no frame/)
 })
