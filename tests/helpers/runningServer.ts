@@ -45,6 +45,7 @@ export interface TestServer {
   url: string
   knex: Knex
   databaseUrl: string
+  ownerUrl: string
   benchTokens: Record<string, string>
   /** by the name before the @ of the demo account */
   signIn: (account: string) => Promise<TestPerson>
@@ -113,6 +114,7 @@ export async function startTestServer(
     url,
     knex,
     databaseUrl: database.url,
+    ownerUrl: database.ownerUrl,
     benchTokens: seeded.benchTokens,
     signIn: async (account) => {
       const answer = await fetch(`${url}${API}/auth/sign-in`, {
