@@ -117,7 +117,7 @@ async function open(
     ],
   })
   await router.push(path)
-  wrapper = mount(CheckView, { global: { plugins: [router] }, attachTo: document.body })
+  wrapper = mount({ template: '<RouterView />' }, { global: { plugins: [router] }, attachTo: document.body })
   await flushPromises()
   return wrapper
 }
@@ -316,8 +316,8 @@ describe('CheckView during and after a run', () => {
     await router.push('/check/HL2409999')
     await flushPromises()
     expect(router.currentRoute.value.fullPath).toBe(path)
-    expect(wrapper!.get('.other').text()).toContain('HL2401873 is still on the bench.')
-    expect(wrapper!.get('.other').text()).toContain('HL2409999')
+    expect(wrapper!.get('.notice').text()).toContain('HL2401873 is still on the bench.')
+    expect(wrapper!.get('.notice').text()).toContain('HL2409999')
     expect(wrapper!.get('h1').text()).toBe('Damp, then pluck string 4, D')
   })
 
