@@ -160,7 +160,7 @@ const Secrets = z.object({ benchTokens: z.record(z.string(), z.string()).optiona
 /** The token is a secret: from the environment or from the file of secrets, never from the command line. */
 function benchToken(bench: string, env: NodeJS.ProcessEnv): string {
   if (env.EVENSTRUNG_BENCH_TOKEN) return env.EVENSTRUNG_BENCH_TOKEN
-  const file = path.join(env.DATA_DIR ?? 'data', 'secrets.json')
+  const file = path.join(env.DATA_DIR ?? '.data', 'secrets.json')
   let token: string | undefined
   try {
     token = Secrets.parse(JSON.parse(readFileSync(file, 'utf8'))).benchTokens?.[bench]

@@ -50,7 +50,7 @@ export const PROMPT_HINTS: Record<PromptKey, string> = {
   dampThenPluck: 'One clean pluck. Any other string is fine too, the bench tells which.',
   pluckAgain: 'The last one did not count; the list says why.',
   pluckMore: 'These plucks lie too far apart or too near a limit. More of them will settle it.',
-  getReadyToWiggle: 'It starts when you move the plug, or press the pedal or Space.',
+  getReadyToWiggle: 'It starts by itself in a moment; the pedal or Space starts it now.',
   wiggleNow: 'Up, down, left, right, then all the way round.',
   enterValues: 'Read your meter, type the value and how sure it is. Leave empty what you did not measure.',
   finished: 'The check is over.',

@@ -1,7 +1,7 @@
 import type { Socket } from 'socket.io'
 import type { Logger } from 'pino'
 import type { z } from 'zod'
-import type { Problem } from '../../src/shared/contract/errors.ts'
+import type { ErrorCode, Problem } from '../../src/shared/contract/errors.ts'
 import { AppError, problemOf } from '../errors.ts'
 
 export type Answer<T extends object> = ({ ok: true } & T) | { ok: false; problem: Problem }
@@ -66,8 +66,14 @@ function shapeProblem(message: unknown, error: z.ZodError): AppError {
   const fields = error.issues
     .slice(0, MOST_FIELDS)
     .map((issue) => ({ path: issue.path.map(String).join('.'), message: issue.message }))
-  const highVoltage = fields.some((field) => field.path.endsWith('testMillivolt')) && hasHighVoltage(message)
-  return new AppError(highVoltage ? 'measure.high-voltage' : 'protocol.message', { fields })
+  return new AppError(codeOfShape(error, message), { fields })
+}
+
+function codeOfShape(error: z.ZodError, message: unknown): ErrorCode {
+  const isTooLong = error.issues.some((issue) => issue.code === 'too_big' && issue.path.join() === 'frames')
+  if (isTooLong) return 'frames.window'
+  const isVoltage = error.issues.some((issue) => issue.path.at(-1) === 'testMillivolt')
+  return isVoltage && hasHighVoltage(message) ? 'measure.high-voltage' : 'protocol.message'
 }
 
 function hasHighVoltage(message: unknown): boolean {

@@ -4,10 +4,15 @@ import {
   BenchHello,
   BenchVerify,
   FrameBatch,
+  FramesAnswer,
+  HelloAnswer,
   MAX_BATCH_FRAMES,
   PROTOCOL_VERSION,
+  RunCommitted,
+  RunEnded,
   RunOrder,
   RunPrompt,
+  VerifyAnswer,
 } from '../../src/shared/contract/frames.ts'
 import { Problem } from '../../src/shared/contract/errors.ts'
 import { SimulationCommand } from '../../src/shared/contract/simulation.ts'
@@ -26,9 +31,16 @@ export function protocolSchema(): Record<string, unknown> {
       'bench:frames': schema(FrameBatch),
       'bench:verify': schema(BenchVerify),
     },
+    answers: {
+      'bench:hello': schema(HelloAnswer),
+      'bench:frames': schema(FramesAnswer),
+      'bench:verify': schema(VerifyAnswer),
+    },
     toBench: {
       'run:start': schema(RunOrder),
       'run:prompt': schema(RunPrompt),
+      'run:committed': schema(RunCommitted),
+      'run:ended': schema(RunEnded),
       'bench:simulate': schema(SimulationCommand),
       'bench:refused': schema(Problem),
       'bench:replaced': schema(Problem),

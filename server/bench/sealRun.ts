@@ -42,8 +42,7 @@ export async function sealRun(knex: Knex, run: OpenRun, measured: MeasuredRun, a
     await insertAudit(
       trx,
       {
-        userId: row.openedBy.id,
-        actor: row.openedBy.name,
+        ...actorOf(run),
         action: `run.${ending.status}`,
         subject: 'run',
         subjectId: row.id,
@@ -59,4 +58,12 @@ export async function sealRun(knex: Knex, run: OpenRun, measured: MeasuredRun, a
     )
     return true
   })
+}
+
+/** Who ended it: the person who stopped it, else the one who opened it; a run that broke off was ended by nobody. */
+function actorOf({ row, actions, ending }: OpenRun): { userId: string | null; actor: string } {
+  if (ending?.status === 'interrupted') return { userId: null, actor: 'server' }
+  const last = actions.at(-1)
+  if (ending?.status === 'stopped' && last) return { userId: last.userId, actor: last.person }
+  return { userId: row.openedBy.id, actor: row.openedBy.name }
 }

@@ -76,6 +76,7 @@ export function createRunsService(deps: RunsDeps) {
       capabilities: hello.capabilities,
       algorithms: hello.algorithms,
       mainsHz: hello.mainsHz,
+      benchClock: hello.wallClock,
       calibrationDb: resized(bench.calibrationDb, channels, 0),
       uCalOwnDb: bench.uCalOwnDb,
       uCalSharedDb: bench.uCalSharedDb,

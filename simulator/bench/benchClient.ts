@@ -340,5 +340,5 @@ class Client implements BenchClient {
 }
 
 function problemOf(code: ErrorCode): Problem {
-  return { type: `urn:evenstrung:${code}`, code, ...ERRORS[code], status: 400 }
+  return { type: `urn:problem-type:evenstrung:${code}`, code, ...ERRORS[code], status: 400 }
 }

@@ -1,9 +1,9 @@
 import { z } from 'zod'
 import { Id, Instant, LevelMdb, StringNo } from './quantities.ts'
 import { Capability } from './rules.ts'
-import { RunPhase, PromptKey } from './measured.ts'
+import { PromptKey, RunPhase, Verdict } from './measured.ts'
 import type { SimulationCommand } from './simulation.ts'
-import type { Problem } from './errors.ts'
+import { Problem } from './errors.ts'
 
 /** Bench protocol, namespace /bench, websocket only. DEVELOPERS.md describes it for someone with real hardware. */
 export const PROTOCOL_VERSION = 1
@@ -166,21 +166,55 @@ export const RunPrompt = z.object({
 })
 export type RunPrompt = z.infer<typeof RunPrompt>
 
+/** Frames below `committed` are safe in the database: the bench may forget them. */
+export const RunCommitted = z.object({ run: Id, committed: z.int().min(0) })
+export type RunCommitted = z.infer<typeof RunCommitted>
+
+/** The run has ended and is stored: the bench may forget it all. */
+export const RunEnded = z.object({
+  run: Id,
+  outcome: z.enum(['sealed', 'stopped', 'interrupted']),
+  verdict: Verdict.nullable(),
+})
+export type RunEnded = z.infer<typeof RunEnded>
+
 /** Every answer to a bench: ok with values, or a problem with its code. */
 export type BenchAnswer<T extends object> = ({ ok: true } & T) | { ok: false; problem: Problem }
 
-export type HelloAnswer = BenchAnswer<{
-  benchId: string
-  name: string
-  /** false: the bench should verify itself before it is used for verdicts */
-  verified: boolean
-  verifiedUntil: string | null
-  /** the run that is open on this bench, if any */
-  order: RunOrder | null
-}>
-/** received up to `next`; safe in the database up to `committed` */
-export type FramesAnswer = BenchAnswer<{ next: number; committed: number; window: number }>
-export type VerifyAnswer = BenchAnswer<{ passed: boolean; validUntil: string | null; reasons: string[] }>
+const refusal = z.object({ ok: z.literal(false), problem: Problem })
+
+export const HelloAnswer = z.union([
+  z.object({
+    ok: z.literal(true),
+    benchId: Id,
+    name: z.string(),
+    /** false: the bench should verify itself before it is used for verdicts */
+    verified: z.boolean(),
+    verifiedUntil: Instant.nullable(),
+    /** the run that is open on this bench, if any */
+    order: RunOrder.nullable(),
+  }),
+  refusal,
+])
+export type HelloAnswer = z.infer<typeof HelloAnswer>
+
+/** Received up to `next`; safe in the database up to `committed`. */
+export const FramesAnswer = z.union([
+  z.object({ ok: z.literal(true), next: z.int().min(0), committed: z.int().min(0), window: z.int().min(0) }),
+  refusal,
+])
+export type FramesAnswer = z.infer<typeof FramesAnswer>
+
+export const VerifyAnswer = z.union([
+  z.object({
+    ok: z.literal(true),
+    passed: z.boolean(),
+    validUntil: Instant.nullable(),
+    reasons: z.array(z.string()),
+  }),
+  refusal,
+])
+export type VerifyAnswer = z.infer<typeof VerifyAnswer>
 
 export interface BenchToServer {
   'bench:hello': (hello: BenchHello, answer: (a: HelloAnswer) => void) => void
@@ -193,13 +227,9 @@ export interface ServerToBench {
   'run:start': (order: RunOrder) => void
   'run:prompt': (prompt: RunPrompt) => void
   /** frames below this number are safe: the bench may forget them */
-  'run:committed': (message: { run: string; committed: number }) => void
+  'run:committed': (message: RunCommitted) => void
   /** the run has ended and is stored: the bench may forget it all */
-  'run:ended': (message: {
-    run: string
-    outcome: 'sealed' | 'stopped' | 'interrupted'
-    verdict: 'pass' | 'fail' | 'none' | null
-  }) => void
+  'run:ended': (message: RunEnded) => void
   'bench:refused': (problem: Problem) => void
   'bench:replaced': (problem: Problem) => void
   /** simulated benches only */

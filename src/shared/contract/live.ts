@@ -51,4 +51,6 @@ export interface ServerToScreen {
   'bench:view': (bench: BenchView) => void
   /** the sign-in behind this socket has ended */
   'session:ended': (problem: Problem) => void
+  /** a message that came without an answer function was refused */
+  'session:refused': (problem: Problem) => void
 }

@@ -48,6 +48,8 @@ export const RunSetup = z.object({
   capabilities: z.array(Capability),
   algorithms: Algorithms,
   mainsHz: z.union([z.literal(50), z.literal(60)]),
+  /** the bench's own clock at its hello: recorded, never used */
+  benchClock: Instant.optional(),
   /** dB to add to each channel's level (six or one of them) */
   calibrationDb: z.array(z.number()),
   /** standard uncertainty of a channel's calibration: what the channels do not share, and what they share */

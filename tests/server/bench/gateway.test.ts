@@ -86,7 +86,7 @@ test('two batches at once: the second is refused, whatever order they are answer
 })
 
 test('malformed messages are refused with their code and counted, with or without an answer function', async () => {
-  const broken: unknown[] = [null, 5, 'frames', [], {}, { run }, batchOf(run, 0, MAX_BATCH_FRAMES + 1)]
+  const broken: unknown[] = [null, 5, 'frames', [], {}, { run }, { ...batchOf(run, 0, 1), from: -1 }]
   for (const message of broken) {
     const before = refusals('protocol.message')
     expect(codeOf(await sendFrames(bench, message))).toBe('protocol.message')
@@ -96,6 +96,11 @@ test('malformed messages are refused with their code and counted, with or withou
   ;(bench as unknown as { emit: (name: string, body: unknown) => void }).emit('bench:frames', { run: 7 })
   expect(await refused).toMatchObject({ code: 'protocol.message' })
   expect(await sendFrames(bench, batchOf(run, 0, 1))).toMatchObject({ ok: true, next: 1 })
+})
+
+test('a batch beyond the window is refused by name', async () => {
+  expect(codeOf(await sendFrames(bench, batchOf(run, 0, MAX_BATCH_FRAMES + 1)))).toBe('frames.window')
+  expect(codeOf(await sendFrames(bench, batchOf(run, 0, MAX_BATCH_FRAMES)))).toBe('ok')
 })
 
 test('a message of unknown name is refused', async () => {
