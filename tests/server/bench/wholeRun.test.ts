@@ -18,7 +18,12 @@ beforeAll(async () => {
   await installer.call('cautions.acknowledge', { body: { id: randomUUID() } })
 })
 
-afterEach(() => endBench())
+afterEach(async () => {
+  endBench()
+  await expect
+    .poll(async () => (await installer.call('benches.list')).items.filter((bench) => bench.connected))
+    .toEqual([])
+})
 afterAll(() => at.close())
 
 async function checkOnBench(
