@@ -57,9 +57,12 @@ test('a screen that joins late gets the whole state first, then thinned levels',
   const screen = at.screen(installer)
   const answer = await screen.emitWithAck('watch:run', { run })
   expect(answer).toMatchObject({ ok: true, view: { id: run, status: 'open', measured: { frames: 40 } } })
-  const levels = once(screen, 'run:levels')
-  await sendFrames(bench, batchOf(run, 40, 10))
-  expect((await levels) as LiveLevels).toMatchObject({ run, frame: 49, jackMdb: -88_000, plugged: true })
+  const seen: LiveLevels[] = []
+  screen.on('run:levels', (levels) => seen.push(levels))
+  // Updates are thinned by the clock, so frames are sent until one is due.
+  for (let from = 40; seen.length === 0; from += 10) await sendFrames(bench, batchOf(run, from, 10))
+  expect(seen[0]).toMatchObject({ run, jackMdb: -88_000, plugged: true })
+  expect(seen[0]!.frame).toBeGreaterThanOrEqual(49)
 })
 
 test('the end of a run reaches the screen as stored', async () => {
