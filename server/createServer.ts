@@ -44,15 +44,17 @@ export async function createServer(deps: {
   knex: Knex
   log: Logger
   now?: () => Date
+  /** ms on a clock that is never set */
+  elapsedMs?: () => number
 }): Promise<RunningServer> {
-  const { config, knex, log, now = () => new Date() } = deps
+  const { config, knex, log, now = () => new Date(), elapsedMs = () => performance.now() } = deps
   const refusals = new Map<string, number>()
   const refused = (code: string) => void refusals.set(code, (refusals.get(code) ?? 0) + 1)
 
   const passwords = createPasswords(config)
   const sessions = createSessions(knex, config, now)
   const hub = new BenchHub()
-  const board = new RunBoard({ knex, log, now, silenceMs: config.benchSilenceSeconds * 1000 })
+  const board = new RunBoard({ knex, log, now, elapsedMs, silenceMs: config.benchSilenceSeconds * 1000 })
   const runs = createRunsService({
     knex,
     board,

@@ -8,6 +8,7 @@ import {
   insertSegment,
   updateStanding,
 } from '../runs/runs.queries.ts'
+import { RUNTIME } from '../runs/runtime.ts'
 import type { OpenRun } from '../runs/openRun.ts'
 
 /**
@@ -24,6 +25,7 @@ export async function sealRun(knex: Knex, run: OpenRun, measured: MeasuredRun, a
       verdict,
       endedAt: at,
       endReason: ending.reason,
+      runtime: RUNTIME,
       measured,
     })
     if (!ended) return false

@@ -65,10 +65,15 @@ export function openLiveGateway(namespace: LiveNamespace, deps: LiveGatewayDeps)
 
     on('watch:run', WatchRun, async ({ run }) => {
       await allowed()
-      const view = await deps.readRun(run)
-      // What the first of a room was sent as a whole is not told again piece by piece.
-      if (!namespace.adapter.rooms.has(runRoom(run))) told.set(run, view.measured.plucks.length)
+      const isFirst = !namespace.adapter.rooms.has(runRoom(run))
+      // Joined first, so that an end in between is not missed; a run that is unknown has no room to stay in.
       await socket.join(runRoom(run))
+      const view = await deps.readRun(run).catch(async (error: unknown) => {
+        await socket.leave(runRoom(run))
+        throw error
+      })
+      // What the first of a room was sent as a whole is not told again piece by piece.
+      if (isFirst && board.find(run)) told.set(run, view.measured.plucks.length)
       return { view }
     })
     on('unwatch:run', WatchRun, async ({ run }) => {

@@ -22,6 +22,8 @@ export interface OpenRun {
   committed: number
   segmentNo: number
   committing: boolean
+  /** this server closes before a segment was stored: nothing after it is stored either */
+  halted: boolean
   actions: RunAction[]
   /** stored before a restart, beyond the frames that were committed: they apply when their frame comes again */
   waiting: RunAction[]
@@ -71,6 +73,7 @@ export function openRunOf(row: RunRow, nowMs: number): OpenRun {
     committed: 0,
     segmentNo: 0,
     committing: false,
+    halted: false,
     actions: [],
     waiting: [],
     actionsUncertain: false,

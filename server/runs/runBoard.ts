@@ -6,29 +6,27 @@ import type { FrameBatch } from '../../src/shared/contract/frames.ts'
 import { LIVE_UPDATES_PER_SECOND } from '../../src/shared/contract/live.ts'
 import { MeasuredRun } from '../../src/shared/contract/measured.ts'
 import type { RunAction, RunActionBody } from '../../src/shared/contract/runs.ts'
-import { replayStored } from '../../src/shared/measure/replayStored.ts'
 import { insertAudit } from '../audit/audit.queries.ts'
 import { ingestFrames } from '../bench/ingestFrames.ts'
 import { sealRun } from '../bench/sealRun.ts'
-import { isDuplicate, isStorageAway } from '../connect.ts'
+import { isStorageAway } from '../connect.ts'
 import { AppError } from '../errors.ts'
+import { applyAllWaiting, loadOpenRun } from './loadOpenRun.ts'
 import { measuredOf, openRunOf } from './openRun.ts'
 import type { OpenRun } from './openRun.ts'
-import {
-  deleteOtherActions,
-  findActions,
-  findOpenRuns,
-  findSegments,
-  insertAction,
-  insertSegment,
-  updateOpener,
-} from './runs.queries.ts'
+import { insertAction, insertSegment, interruptRun, openRunIds, updateOpener } from './runs.queries.ts'
 import type { RunRow } from './runs.queries.ts'
-import { unpackTrace } from './traceSegment.ts'
+import { storeAction } from './storeAction.ts'
 
 /** A segment of the trace is committed when this much run time has come in. */
 export const SEGMENT_MS = 30_000
 const MEASURING_FAILED = 'measuring failed; the trace is kept and can be computed again'
+const UNREADABLE = 'the run could not be read back; trace and actions are kept'
+const TOO_LONG = 'the run took longer than half an hour'
+/** A check takes a minute or two: what streams on for this long was forgotten. */
+const MOST_RUN_MS = 30 * 60_000
+/** How often open runs of the database are looked for that nobody here measures. */
+const ADOPT_EVERY_MS = 30_000
 const RETRY_MS = [200, 500, 1000, 2000, 5000]
 const LEVELS_EVERY_MS = 1000 / LIVE_UPDATES_PER_SECOND
 
@@ -36,6 +34,8 @@ export interface RunBoardDeps {
   knex: Knex
   log: Logger
   now: () => Date
+  /** ms that have passed on a clock that is never set; by it silence is told */
+  elapsedMs: () => number
   /** a bench that is silent for this long leaves its run interrupted */
   silenceMs: number
 }
@@ -59,18 +59,24 @@ export class RunBoard {
   private readonly byBench = new Map<string, OpenRun>()
   private readonly shown = new WeakMap<OpenRun, { change: number; levelsAtMs: number }>()
   private readonly closing = new AbortController()
-  private readonly sweep: NodeJS.Timeout
+  private readonly adopting = new Map<string, Promise<OpenRun | null>>()
+  private readonly sweepEveryMs: number
+  private readonly timers: NodeJS.Timeout[]
+  private sweptAtMs: number
 
   constructor(deps: RunBoardDeps) {
     this.deps = deps
-    this.sweep = setInterval(() => this.interruptSilent(), Math.min(5000, deps.silenceMs / 4))
-    this.sweep.unref()
+    this.sweepEveryMs = Math.min(5000, deps.silenceMs / 4)
+    this.sweptAtMs = deps.elapsedMs()
+    this.timers = [
+      setInterval(() => this.interruptSilent(), this.sweepEveryMs).unref(),
+      setInterval(() => void this.adoptOrphans(), ADOPT_EVERY_MS).unref(),
+    ]
   }
 
   open(row: RunRow): OpenRun {
-    const run = openRunOf(row, this.deps.now().getTime())
-    this.add(run)
-    return run
+    const there = this.runs.get(row.id)
+    return there ?? this.add(openRunOf(row, this.deps.elapsedMs()))
   }
 
   find(runId: string): OpenRun | undefined {
@@ -81,39 +87,76 @@ export class RunBoard {
     return this.byBench.get(benchId)
   }
 
-  /** Open runs of the database, replayed as far as their traces were committed. */
+  /** Open runs of the database, measured again as far as their traces were committed. */
   async restore(): Promise<number> {
-    const rows = await findOpenRuns(this.deps.knex)
-    for (const row of rows) {
-      if (this.runs.has(row.id)) continue
-      const segments = await findSegments(this.deps.knex, row.seq)
-      const actions = await findActions(this.deps.knex, row.seq)
-      const run = openRunOf(row, this.deps.now().getTime())
-      const { frames, events } = unpackTrace(segments)
-      const replayed = replayStored(row.setup, frames, events, actions, false)
-      Object.assign(run, {
-        state: replayed.state,
-        next: replayed.frames,
-        committed: replayed.frames,
-        segmentNo: segments.length,
-        actions,
-        waiting: replayed.left,
-      })
-      this.add(run)
-      this.endWhenFinished(run)
+    const ids = await openRunIds(this.deps.knex)
+    for (const id of ids) await this.adopt(id)
+    return ids.length
+  }
+
+  /**
+   * Takes an open run of the database that is not measured here: after a restart, or when the outcome of its start
+   * was not known. One that cannot be read back ends without a verdict and holds nobody up. null: it is not open.
+   */
+  adopt(id: string): Promise<OpenRun | null> {
+    const there = this.runs.get(id)
+    if (there) return Promise.resolve(there)
+    const underWay = this.adopting.get(id)
+    if (underWay) return underWay
+    const work = this.load(id).finally(() => this.adopting.delete(id))
+    this.adopting.set(id, work)
+    return work
+  }
+
+  private async load(id: string): Promise<OpenRun | null> {
+    let loaded: OpenRun | null
+    try {
+      loaded = await loadOpenRun(this.deps.knex, id, this.deps.elapsedMs())
+    } catch (error) {
+      if (isStorageAway(error)) throw error
+      this.deps.log.error({ err: error, run: id }, 'an open run could not be read back')
+      await this.giveUp(id)
+      return null
     }
-    return rows.length
+    if (!loaded) return null
+    const run = this.runs.get(id) ?? this.add(loaded)
+    this.endWhenFinished(run)
+    return run
+  }
+
+  private giveUp(id: string): Promise<void> {
+    const at = this.deps.now()
+    return this.deps.knex.transaction(async (trx) => {
+      if (!(await interruptRun(trx, id, UNREADABLE, at))) return
+      const entry = {
+        userId: null,
+        actor: 'server',
+        action: 'run.interrupted',
+        subject: 'run',
+        subjectId: id,
+      }
+      await insertAudit(trx, { ...entry, details: { reason: UNREADABLE } }, at)
+    })
+  }
+
+  private async adoptOrphans(): Promise<void> {
+    try {
+      for (const id of await openRunIds(this.deps.knex)) if (!this.runs.has(id)) await this.adopt(id)
+    } catch (error) {
+      this.deps.log.warn({ err: error }, 'open runs could not be looked for')
+    }
   }
 
   /** A batch of frames from the bench that holds the run. */
   takeFrames(run: OpenRun, batch: FrameBatch): Promise<{ next: number; committed: number }> {
     return run.queue.add(() => {
       if (run.ending) throw new AppError('run.not-open', { facts: { next: run.next } })
-      run.lastHeardMs = this.deps.now().getTime()
+      run.lastHeardMs = this.deps.elapsedMs()
       ingestFrames(run, batch)
       this.announce(run)
       this.commitWhenDue(run)
       this.endWhenFinished(run)
+      if (run.next * run.row.setup.frameMs >= MOST_RUN_MS) this.end(run, 'interrupted', TOO_LONG)
       return { next: run.next, committed: run.committed }
     })
   }
@@ -129,7 +172,7 @@ export class RunBoard {
       const refusal = run.method.refusalOf(run.state, body)
       if (refusal) throw new AppError('run.action-not-now', { detail: refusal })
       const action = this.actionOf(run, id, body, actor)
-      await this.store(run, () => insertAction(this.deps.knex, run.row.seq, action))
+      await storeAction(this.deps.knex, run, () => insertAction(this.deps.knex, run.row.seq, action))
       return this.apply(run, action)
     })
   }
@@ -142,7 +185,7 @@ export class RunBoard {
       if (actor.id !== run.row.openedBy.id && !actor.mayStopAny)
         throw new AppError('run.not-yours', { facts: { person: run.row.openedBy.name } })
       const action = this.actionOf(run, id, { kind: 'changePerson', person: actor.name }, actor)
-      await this.store(run, () =>
+      await storeAction(this.deps.knex, run, () =>
         this.deps.knex.transaction(async (trx) => {
           await insertAction(trx, run.row.seq, action)
           await updateOpener(trx, run.row.seq, actor.id)
@@ -168,12 +211,12 @@ export class RunBoard {
   /** The bench came or went: whoever looks at its run is told. */
   benchChanged(benchId: string): void {
     const run = this.byBench.get(benchId)
-    if (run) this.events.emit('changed', run)
+    if (run) this.tell('changed', run)
   }
 
   /** Waits for what is being stored; open runs stay open in the database and are restored at the next start. */
   async close(): Promise<void> {
-    clearInterval(this.sweep)
+    for (const timer of this.timers) clearInterval(timer)
     this.closing.abort()
     for (const run of [...this.runs.values()]) {
       await run.queue.idle()
@@ -181,9 +224,10 @@ export class RunBoard {
     }
   }
 
-  private add(run: OpenRun): void {
+  private add(run: OpenRun): OpenRun {
     this.runs.set(run.row.id, run)
     this.byBench.set(run.row.benchId, run)
+    return run
   }
 
   private actionOf(run: OpenRun, id: string, action: RunActionBody, actor: Actor): RunAction {
@@ -199,33 +243,14 @@ export class RunBoard {
     }
   }
 
-  /**
-   * After an insert whose outcome is not known its person is told that it was not stored; should it be there all
-   * the same it is removed before anything else is stored, so that the database says what the person was told.
-   */
-  private async store(run: OpenRun, insert: () => Promise<unknown>): Promise<void> {
-    const kept = run.actions.map((action) => action.id)
-    try {
-      if (run.actionsUncertain) {
-        await deleteOtherActions(this.deps.knex, run.row.seq, kept)
-        run.actionsUncertain = false
-      }
-      await insert()
-    } catch (error) {
-      if (isDuplicate(error)) throw new AppError('record.exists')
-      if (!isStorageAway(error)) throw error
-      run.actionsUncertain = true
-      throw new AppError('storage.away')
-    }
-  }
-
   private apply(run: OpenRun, action: RunAction): MeasuredRun {
     run.actions.push(action)
-    if (run.waiting.length > 0 || action.frame > run.next) run.waiting.push(action)
+    const isStop = action.action.kind === 'stop'
+    if (isStop) applyAllWaiting(run)
+    if (!isStop && (run.waiting.length > 0 || action.frame > run.next)) run.waiting.push(action)
     else run.method.takeAction(run.state, action)
-    this.events.emit('changed', run)
-    if (action.action.kind === 'stop') this.end(run, 'stopped', action.action.reason)
-    else this.endWhenFinished(run)
+    this.tell('changed', run)
+    this.endWhenFinished(run)
     return measuredOf(run)
   }
 
@@ -235,12 +260,12 @@ export class RunBoard {
     this.shown.set(run, shown)
     if (nowMs - shown.levelsAtMs >= LEVELS_EVERY_MS || nowMs < shown.levelsAtMs) {
       shown.levelsAtMs = nowMs
-      this.events.emit('levels', run)
+      this.tell('levels', run)
     }
     const change = run.method.changeCount(run.state)
     if (change !== shown.change) {
       shown.change = change
-      this.events.emit('changed', run)
+      this.tell('changed', run)
     }
   }
 
@@ -248,7 +273,7 @@ export class RunBoard {
     const segmentFrames = SEGMENT_MS / run.row.setup.frameMs
     if (run.committing || run.buffer.frames < segmentFrames) return
     run.committing = true
-    void run.storing.add(async () => {
+    this.inOrder(run, async () => {
       await this.commit(run, segmentFrames)
       run.committing = false
     })
@@ -259,11 +284,14 @@ export class RunBoard {
     const stored = await this.untilStored(run, () =>
       insertSegment(this.deps.knex, run.row.seq, segment, this.deps.now()),
     )
-    if (!stored) return
+    if (!stored) {
+      run.halted = true
+      return
+    }
     run.segmentNo++
     run.committed += frames
     run.buffer.drop(frames, run.committed)
-    this.events.emit('committed', run)
+    this.tell('committed', run)
   }
 
   private endWhenFinished(run: OpenRun): void {
@@ -271,12 +299,16 @@ export class RunBoard {
     if (run.fault) {
       this.deps.log.error({ err: run.fault, run: run.row.id }, 'measuring failed, the trace is kept')
       this.end(run, 'interrupted', MEASURING_FAILED)
+    } else if (run.method.phaseOf(run.state) === 'stopped') {
+      const stop = run.actions.findLast(({ action }) => action.kind === 'stop')?.action
+      this.end(run, 'stopped', stop?.kind === 'stop' ? stop.reason : null)
     } else if (run.method.isFinished(run.state)) this.end(run, 'sealed', null)
   }
 
   private end(run: OpenRun, status: 'sealed' | 'stopped' | 'interrupted', reason: string | null): void {
     if (run.ending) return
     run.storage = 'judgedNotStored'
+    applyAllWaiting(run)
     const measured = measuredOf(run)
     const shape = MeasuredRun.safeParse(measured)
     if (!shape.success) {
@@ -286,11 +318,12 @@ export class RunBoard {
       run.measured = run.method.viewRun(run.method.startRun(run.row.setup))
     }
     run.ending = shape.success ? { status, reason } : { status: 'interrupted', reason: MEASURING_FAILED }
-    this.events.emit('changed', run)
-    void run.storing.add(() => this.seal(run))
+    this.tell('changed', run)
+    this.inOrder(run, () => this.seal(run))
   }
 
   private async seal(run: OpenRun): Promise<void> {
+    if (run.halted) return
     const stored = await this.untilStored(run, () =>
       sealRun(this.deps.knex, run, run.measured, this.deps.now()),
     )
@@ -299,7 +332,7 @@ export class RunBoard {
     run.committed = run.next
     this.runs.delete(run.row.id)
     if (this.byBench.get(run.row.benchId) === run) this.byBench.delete(run.row.benchId)
-    this.events.emit('ended', run)
+    this.tell('ended', run)
   }
 
   /**
@@ -322,13 +355,30 @@ export class RunBoard {
   }
 
   private interruptSilent(): void {
-    const nowMs = this.deps.now().getTime()
+    const nowMs = this.deps.elapsedMs()
+    // After a pause of the whole process this timer comes before the frames that wait to be read.
+    const wasPaused = nowMs - this.sweptAtMs > 2 * this.sweepEveryMs
+    this.sweptAtMs = nowMs
     for (const run of this.runs.values()) {
+      if (wasPaused) run.lastHeardMs = nowMs
       if (run.ending || nowMs - run.lastHeardMs < this.deps.silenceMs) continue
-      void run.queue.add(() => {
-        if (this.deps.now().getTime() - run.lastHeardMs >= this.deps.silenceMs)
-          this.end(run, 'interrupted', 'the bench fell silent')
-      })
+      this.end(run, 'interrupted', 'the bench fell silent')
+    }
+  }
+
+  /** Commits and the end of one run, one after the other; a fault there must not end the process. */
+  private inOrder(run: OpenRun, work: () => Promise<void>): void {
+    run.storing.add(work).catch((error: unknown) => {
+      run.halted = true
+      this.deps.log.error({ err: error, run: run.row.id }, 'storing a run failed')
+    })
+  }
+
+  private tell(event: keyof RunBoardEvents, run: OpenRun): void {
+    try {
+      this.events.emit(event, run)
+    } catch (error) {
+      this.deps.log.error({ err: error, run: run.row.id, event }, 'a listener failed')
     }
   }
 }

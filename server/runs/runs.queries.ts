@@ -120,9 +120,28 @@ export async function findRun(knex: Knex, id: string): Promise<RunRow | null> {
   return raw ? toRun(raw) : null
 }
 
-export async function findOpenRuns(knex: Knex): Promise<RunRow[]> {
-  const rows = await runs(knex).where('runs.status', 'open').orderBy('runs.seq').select<RawRun[]>(RUN_COLUMNS)
-  return rows.map(toRun)
+export async function openRunIds(knex: Knex): Promise<string[]> {
+  return knex('runs').where({ status: 'open' }).orderBy('seq').pluck('id')
+}
+
+/** Frees bench and serial of a run that cannot be measured any further; its trace and actions stay. */
+export async function interruptRun(trx: Knex, id: string, reason: string, at: Date): Promise<boolean> {
+  const changed = await trx('runs').where({ id, status: 'open' }).update({
+    status: 'interrupted',
+    verdict: 'none',
+    ended_at: at,
+    end_reason: reason,
+    open_bench_id: null,
+    open_instrument_id: null,
+  })
+  return changed > 0
+}
+
+/** Whether this action was stored for this run. */
+export async function hasAction(knex: Knex, seq: number, id: string): Promise<boolean> {
+  return Boolean(
+    await knex('run_actions').where({ id, run_seq: seq }).first<{ id: string } | undefined>('id'),
+  )
 }
 
 /** The open run that holds this bench or this instrument, for the loser of a race. */
@@ -208,7 +227,7 @@ export async function deleteOtherActions(knex: Knex, seq: number, keep: readonly
     .delete()
 }
 
-/** Storing the same segment again changes nothing: its place is taken by itself. */
+/** Storing the same segment again changes nothing; another one in its place is an error. */
 export async function insertSegment(
   knex: Knex,
   seq: number,
@@ -227,6 +246,11 @@ export async function insertSegment(
     })
   } catch (error) {
     if (!isDuplicate(error)) throw error
+    const stored = await knex('trace_segments')
+      .where({ run_seq: seq, no: segment.no })
+      .first<{ sha256: Buffer } | undefined>('sha256')
+    if (!stored?.sha256.equals(segment.sha256))
+      throw new Error(`segment ${segment.no} is stored with other bytes`, { cause: error })
   }
 }
 
@@ -252,6 +276,8 @@ export interface RunEnd {
   verdict: Verdict
   endedAt: Date
   endReason: string | null
+  /** what computed the readings that are stored */
+  runtime: string
   measured: MeasuredRun
 }
 
@@ -262,6 +288,7 @@ export async function endRun(trx: Knex, seq: number, end: RunEnd): Promise<boole
     verdict: end.verdict,
     ended_at: end.endedAt,
     end_reason: end.endReason,
+    runtime: end.runtime,
     open_bench_id: null,
     open_instrument_id: null,
   })

@@ -2,6 +2,7 @@ import { randomUUID } from 'node:crypto'
 import type { Knex } from 'knex'
 import { z } from 'zod'
 import { ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
+import { isDuplicate } from '../connect.ts'
 import { AppError } from '../errors.ts'
 import type { Model } from '../../src/shared/contract/thresholds.ts'
 import { modelOf } from '../models/models.queries.ts'
@@ -81,6 +82,7 @@ export async function findSheetInForce(
   return row ? ThresholdSheet.parse(fromJson(row.sheet)) : null
 }
 
+/** Two at once for one new serial: the second one waits for the first and then finds its record. */
 export async function findOrInsertInstrument(
   trx: Knex,
   serial: string,
@@ -90,10 +92,19 @@ export async function findOrInsertInstrument(
   const known = await trx('instruments').where({ serial }).first<{ id: string } | undefined>('id')
   if (known) return known.id
   const id = randomUUID()
-  await trx('instruments')
-    .insert({ id, serial, serial_folded: foldedSerial(serial), model_id: modelId, created_at: at })
-    .onConflict('serial')
-    .ignore()
-  const row = await trx('instruments').where({ serial }).first<{ id: string }>('id')
-  return row.id
+  try {
+    await trx('instruments').insert({
+      id,
+      serial,
+      serial_folded: foldedSerial(serial),
+      model_id: modelId,
+      created_at: at,
+    })
+    return id
+  } catch (error) {
+    if (!isDuplicate(error)) throw error
+    // A plain read would still show the moment at which this transaction began.
+    const row = await trx('instruments').where({ serial }).forShare().first<{ id: string }>('id')
+    return row.id
+  }
 }

@@ -58,7 +58,7 @@ export interface TestServer {
 
 /** The demo workshop on a real database, with real HTTP and real sockets on a port of its own. */
 export async function startTestServer(
-  options: { now?: () => Date; env?: Record<string, string> } = {},
+  options: { now?: () => Date; elapsedMs?: () => number; env?: Record<string, string> } = {},
 ): Promise<TestServer> {
   const database = await createTestDatabase()
   const dataDir = mkdtempSync(path.join(tmpdir(), 'evenstrung-test-'))
@@ -81,7 +81,7 @@ export async function startTestServer(
   const sockets = new Set<BenchClient | ScreenClient>()
 
   let pool = connect(database.url, 8)
-  let server = await createServer({ config, knex: pool, log, now: options.now })
+  let server = await createServer({ config, knex: pool, log, now: options.now, elapsedMs: options.elapsedMs })
   const listen = (port: number) =>
     new Promise<void>((resolve) => server.http.listen(port, '127.0.0.1', () => resolve()))
   await listen(0)
@@ -153,7 +153,7 @@ export async function startTestServer(
       await server.close()
       await pool.destroy()
       pool = connect(database.url, 8)
-      server = await createServer({ config, knex: pool, log, now: options.now })
+      server = await createServer({ config, knex: pool, log, now: options.now, elapsedMs: options.elapsedMs })
       await listen(port)
     },
     close: async () => {
