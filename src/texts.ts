@@ -158,6 +158,10 @@ export const WARNINGS: Record<MeasuredRun['warnings'][number], TextPair> = {
     title: 'This bench cannot measure every rule.',
     remedy: 'The missing values can be typed in at the end.',
   },
+  controlsNotSet: {
+    title: 'Controls were not said to be set.',
+    remedy: 'Levels depend on them. Set volume and tone as the model asks and check again.',
+  },
 }
 
 export const VERDICTS: Record<Verdict, string> = { pass: 'Pass', fail: 'Fail', none: 'No verdict' }

@@ -173,6 +173,7 @@ export const MeasuredRun = z.object({
       'batteryLow',
       'notYetQuiet',
       'ruleNotMeasurable',
+      'controlsNotSet',
     ]),
   ),
   /** string 1 first */

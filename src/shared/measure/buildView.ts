@@ -112,13 +112,14 @@ function noiseOf(state: RunState, noise: NoiseReadings): MeasuredRun['noise'] {
 function jackOf(state: RunState): JackState {
   const { jack, setup } = state
   const inWiggle = state.phase === 'wiggle'
+  const isWiggleShown = inWiggle || (jack.wiggleDone && !jack.wiggle.endedUnplugged)
   const ohm = (microOhm: number | null) => (microOhm === null ? null : microOhm / 1_000_000)
   return {
     unpluggedOpen: jack.unpluggedDone ? allNo(jack.unplugged.ringClosed) : null,
     pluggedClosed: jack.restDone ? allYes(jack.rest.ringClosed) : null,
-    tipSteady: tipSteady(state),
-    disturbanceCount: inWiggle || jack.wiggleDone ? jack.wiggle.count : null,
-    disturbanceLongestMs: inWiggle || jack.wiggleDone ? jack.wiggle.longestTenthMs / 10 : null,
+    tipSteady: jack.wiggle.endedUnplugged ? null : tipSteady(state),
+    disturbanceCount: isWiggleShown ? jack.wiggle.count : null,
+    disturbanceLongestMs: isWiggleShown ? jack.wiggle.longestTenthMs / 10 : null,
     contactTipOhm: ohm(jack.contact.tip),
     contactRingOhm: ohm(jack.contact.ring),
     contactSleeveOhm: ohm(jack.contact.sleeve),
@@ -150,6 +151,7 @@ function warningsOf(state: RunState): MeasuredRun['warnings'] {
       !state.entered.some((entry) => entry.rule === rule),
   )
   const warnings: MeasuredRun['warnings'] = []
+  if (!setup.conditions.controlsSet) warnings.push('controlsNotSet')
   if (strungMinutes !== null && strungMinutes < FRESH_STRINGS_MINUTES) warnings.push('stringsFresh')
   if (judgesBalance && patternInForce(setup.sheet) === null) warnings.push('patternNotSet')
   if (!setup.verified) warnings.push('benchNotVerified')
@@ -176,9 +178,9 @@ export function promptOf(state: RunState): { prompt: PromptKey; stringNo: number
     case 'strings':
       return stringsPrompt(state)
     case 'wiggleReady':
-      return { prompt: 'getReadyToWiggle', stringNo: null }
+      return { prompt: state.plugged === false ? 'plugIn' : 'getReadyToWiggle', stringNo: null }
     case 'wiggle':
-      return { prompt: 'wiggleNow', stringNo: null }
+      return { prompt: state.jack.wiggle.waitsForPlug ? 'plugIn' : 'wiggleNow', stringNo: null }
     case 'entry':
       return { prompt: 'enterValues', stringNo: null }
     case 'done':

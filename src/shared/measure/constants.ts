@@ -98,6 +98,16 @@ export const JACK_REST_MOST_MS = 5000
 export const WIGGLE_READY_MS = 4000
 /** ms after the wiggle in which reports of what started inside it are still taken. */
 export const WIGGLE_GRACE_MS = 300
+/**
+ * ms after the plug was first seen out in the wiggle from which one that is out ends it, as not measured: time to put
+ * it back and wiggle once or twice more. Common practice, no source.
+ */
+export const WIGGLE_PLUG_OUT_MOST_MS = 30_000
+/**
+ * Share of the wiggle's frames in which a bench that measures the tip must have measured it: fewer is no wiggle that
+ * was watched. Common practice, no source.
+ */
+export const WIGGLE_TIP_LEAST_SHARE = 0.9
 
 /** dB, half a step of what travels (0.001 dB) is the limit of resolution: u = step / sqrt 12. */
 export const LEVEL_STEP_DB = 0.001

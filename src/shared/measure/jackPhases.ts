@@ -1,18 +1,6 @@
 import type { Frame } from '../contract/frames.ts'
-import {
-  JACK_REST_MOST_MS,
-  JACK_REST_MS,
-  SETTLE_MOST_MS,
-  UNPLUGGED_MS,
-  WIGGLE_GRACE_MS,
-} from './constants.ts'
-import {
-  restartRest,
-  restartUnplugged,
-  takeRestFrame,
-  takeUnpluggedFrame,
-  takeWiggleFrame,
-} from './jackWatch.ts'
+import { JACK_REST_MOST_MS, JACK_REST_MS, SETTLE_MOST_MS, UNPLUGGED_MS } from './constants.ts'
+import { restartRest, restartUnplugged, takeRestFrame, takeUnpluggedFrame } from './jackWatch.ts'
 import { elapsedMs, settledMs } from './phaseTime.ts'
 import { hasSettled, restartSettleWatch, takeSettleFrame } from './settleWatch.ts'
 import type { RunState } from './state.ts'
@@ -58,14 +46,5 @@ export function foldJackRest(state: RunState, frame: Frame): boolean {
   takeRestFrame(jack, frame)
   if (jack.rest.frames * state.setup.frameMs < JACK_REST_MS && !tooLong) return false
   jack.restDone = true
-  return true
-}
-
-/** Watches the tip while the plug is wiggled, then waits for late reports. True: done. */
-export function foldWiggle(state: RunState, frame: Frame): boolean {
-  const lastedMs = elapsedMs(state)
-  if (lastedMs <= state.setup.sheet.wiggleMs) takeWiggleFrame(state.jack, frame)
-  if (lastedMs < state.setup.sheet.wiggleMs + WIGGLE_GRACE_MS) return false
-  state.jack.wiggleDone = true
   return true
 }

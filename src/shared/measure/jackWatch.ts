@@ -14,6 +14,23 @@ export interface Average {
 
 export type Pole = 'tip' | 'ring' | 'sleeve'
 
+/** What was seen in the wiggle. A wiggle that starts again keeps what was seen before: it happened. */
+export interface WiggleWatch {
+  tipClosed: Tally
+  /** frames since it last started in which the tip was measured */
+  tipFrames: number
+  count: number
+  longestTenthMs: number
+  /** stretches in which the plug was in and wiggled, [from, to): disturbances that start inside count */
+  stretches: { fromTenthMs: number; toTenthMs: number }[]
+  /** the plug came out: the wiggle starts again when it is back */
+  waitsForPlug: boolean
+  /** frame in which the plug was first seen out */
+  firstOutFrame: number | null
+  /** the plug stayed out for too long: what was seen is no reading of a wiggle */
+  endedUnplugged: boolean
+}
+
 /** What was seen of the jack, the supply and the contacts. */
 export interface JackWatch {
   unplugged: { frames: number; ringClosed: Tally; tipClosed: Tally; currentUa: Average }
@@ -26,7 +43,7 @@ export interface JackWatch {
     currentUa: Average
     batteryMv: Average
   }
-  wiggle: { tipClosed: Tally; count: number; longestTenthMs: number; fromTenthMs: number; toTenthMs: number }
+  wiggle: WiggleWatch
   restDone: boolean
   unpluggedDone: boolean
   wiggleDone: boolean
@@ -41,7 +58,16 @@ export function createJackWatch(): JackWatch {
   return {
     unplugged: { frames: 0, ringClosed: tally(), tipClosed: tally(), currentUa: average() },
     rest: emptyRest(),
-    wiggle: { tipClosed: tally(), count: 0, longestTenthMs: 0, fromTenthMs: 0, toTenthMs: 0 },
+    wiggle: {
+      tipClosed: tally(),
+      tipFrames: 0,
+      count: 0,
+      longestTenthMs: 0,
+      stretches: [],
+      waitsForPlug: false,
+      firstOutFrame: null,
+      endedUnplugged: false,
+    },
     restDone: false,
     unpluggedDone: false,
     wiggleDone: false,
@@ -120,18 +146,32 @@ export function takeRestFrame(jack: JackWatch, frame: Frame): void {
   add(jack.rest.batteryMv, frame.batteryMv)
 }
 
-export function restartWiggle(jack: JackWatch, fromTenthMs: number, toTenthMs: number): void {
-  jack.wiggle = { tipClosed: tally(), count: 0, longestTenthMs: 0, fromTenthMs, toTenthMs }
+/** Watches the wiggle from a moment on, or anew: the tip is measured again, what was seen stays. */
+export function watchWiggle({ wiggle }: JackWatch, fromTenthMs: number, toTenthMs: number): void {
+  cutWiggle(wiggle, fromTenthMs)
+  wiggle.stretches.push({ fromTenthMs, toTenthMs })
+  wiggle.tipFrames = 0
+  wiggle.waitsForPlug = false
 }
 
-export function takeWiggleFrame(jack: JackWatch, frame: Frame): void {
-  count(jack.wiggle.tipClosed, frame.tipClosed)
+/** Ends the stretch that is being watched, if it has not ended. */
+export function cutWiggle(wiggle: WiggleWatch, atTenthMs: number): void {
+  const last = wiggle.stretches.at(-1)
+  if (last !== undefined && last.toTenthMs > atTenthMs) last.toTenthMs = atTenthMs
 }
 
-/** Counts a contact disturbance of any pole that starts inside the wiggle. */
+export function takeWiggleFrame({ wiggle }: JackWatch, frame: Frame): void {
+  count(wiggle.tipClosed, frame.tipClosed)
+  if (frame.tipClosed !== null) wiggle.tipFrames++
+}
+
+/** Counts a contact disturbance of any pole that starts inside the wiggle, in any stretch of it. */
 export function takeDisturbance(jack: JackWatch, event: Extract<BenchEvent, { kind: 'disturbance' }>): void {
-  const { fromTenthMs, toTenthMs } = jack.wiggle
-  if (event.startTenthMs < fromTenthMs || event.startTenthMs >= toTenthMs) return
+  const { startTenthMs } = event
+  const inside = jack.wiggle.stretches.some(
+    ({ fromTenthMs, toTenthMs }) => startTenthMs >= fromTenthMs && startTenthMs < toTenthMs,
+  )
+  if (!inside) return
   jack.wiggle.count++
   jack.wiggle.longestTenthMs = Math.max(jack.wiggle.longestTenthMs, event.durationTenthMs)
 }

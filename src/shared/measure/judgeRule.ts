@@ -20,6 +20,8 @@ export interface RuleFact {
   notTested: 'notMeasurable' | 'notReached' | null
   /** there is something, but it is no sound reading */
   invalid: 'scatterTooLarge' | 'tooFewPlucks' | 'noReference' | 'noSignal' | 'disagreesWithState' | null
+  /** why it cannot be within: a value outside its limits still is outside, any other is invalid */
+  notWithin: 'disagreesWithState' | null
   /** outside whatever the value: the reason */
   outside: 'noSignal' | null
   /** the value is not known, but it is at least this */
@@ -45,6 +47,7 @@ export const NO_FACT: RuleFact = {
   byHand: false,
   notTested: null,
   invalid: null,
+  notWithin: null,
   outside: null,
   atLeast: null,
   simulated: null,
@@ -59,7 +62,9 @@ export type Decision = Pick<RuleResult, 'rule' | 'stringNo' | 'result' | 'onOuts
  * pattern in force a balance rule only advises and nothing requires it.
  */
 export function decideRule(rule: SheetRule, fact: RuleFact, options: JudgeOptions): Decision {
-  const { result, why } = decide(fact, rule, options.guard)
+  const decided = decide(fact, rule, options.guard)
+  const isUnsure = decided.result === 'within' && fact.notWithin !== null
+  const { result, why } = isUnsure ? { result: 'invalid' as const, why: fact.notWithin } : decided
   return {
     rule: rule.rule,
     stringNo: options.stringNo,

@@ -1,24 +1,15 @@
 import type { BenchEvent, Frame } from '../contract/frames.ts'
 import type { RunPhase } from '../contract/measured.ts'
-import { CENSOR_DB, NOTHING_CAME_MS, SAME_PLUCK_MS, WIGGLE_READY_MS, WINDOW_TO_MS } from './constants.ts'
+import { CENSOR_DB, NOTHING_CAME_MS, SAME_PLUCK_MS, WINDOW_TO_MS } from './constants.ts'
 import { evaluateRun } from './evaluateRun.ts'
-import { framesOf } from './framesOf.ts'
-import { foldJackRest, foldSettle, foldUnplugged, foldWiggle } from './jackPhases.ts'
-import {
-  restartRest,
-  restartUnplugged,
-  restartWiggle,
-  takeContact,
-  takeDisturbance,
-  takeInsulation,
-} from './jackWatch.ts'
+import { foldJackRest, foldSettle, foldUnplugged } from './jackPhases.ts'
+import { restartRest, restartUnplugged, takeContact, takeDisturbance, takeInsulation } from './jackWatch.ts'
 import { decideRun, stringsInGuardBand } from './judgeRun.ts'
 import { forgetLevels, meanPowerIn, pushFrame } from './levelRing.ts'
 import { dbOfPower } from './meanPowerDb.ts'
 import { foldNoise, takeHum, takeLatestNoise } from './noisePhase.ts'
 import { restartNoiseStretch } from './noiseStretch.ts'
 import { disarmOnsets } from './onsetWatch.ts'
-import { elapsedMs } from './phaseTime.ts'
 import { forgetPitches, logPitch } from './pitchLog.ts'
 import { endPlucks, interruptPluck, takeNoSignal, watchPlucks } from './plucks.ts'
 import { progressOf } from './progressOf.ts'
@@ -28,6 +19,7 @@ import { restartSettleWatch } from './settleWatch.ts'
 import { askedString, channelOf, isFinished, type RunState } from './state.ts'
 import { askForOneMore, type StringTally } from './stringTally.ts'
 import { verdictOf } from './verdictOf.ts'
+import { foldWiggle, foldWiggleReady, startWiggle } from './wigglePhase.ts'
 
 /** Folds one frame, its events first, except the end of a recording, which comes after its last frame. */
 export function foldFrame(state: RunState, frame: Frame, events: readonly BenchEvent[]): void {
@@ -39,12 +31,18 @@ export function foldFrame(state: RunState, frame: Frame, events: readonly BenchE
   }
   if (isFinished(state)) return
   const frameNo = state.frames
-  if (frame.plugged !== null) state.plugged = frame.plugged
+  notePlug(state, frame)
   pushFrame(state.ring, frameNo, frame)
   state.frames = frameNo + 1
   foldIntoPhase(state, frameNo, frame)
   noteProgress(state)
   if (ended) endRun(state)
+}
+
+function notePlug(state: RunState, { plugged }: Frame): void {
+  if (plugged === null || plugged === state.plugged) return
+  state.plugged = plugged
+  state.changes++
 }
 
 function foldIntoPhase(state: RunState, frameNo: number, frame: Frame): void {
@@ -66,7 +64,7 @@ function foldIntoPhase(state: RunState, frameNo: number, frame: Frame): void {
       if (askedString(state) === null) finishStrings(state)
       return
     case 'wiggleReady':
-      if (elapsedMs(state) >= WIGGLE_READY_MS) beginWiggle(state, 'itself')
+      if (foldWiggleReady(state)) beginWiggle(state, 'itself')
       return
     case 'wiggle':
       if (foldWiggle(state, frame)) advance(state)
@@ -168,23 +166,17 @@ function breakOff(state: RunState): void {
       state.humWaiting = []
       return restartNoiseStretch(state.stretch)
     case 'wiggle':
-      state.jack.wiggleStartedBy ??= 'itself'
-      return beginWiggle(state, state.jack.wiggleStartedBy)
+      // one that waits for the plug starts again when it is back
+      if (!state.jack.wiggle.waitsForPlug) startWiggle(state)
+      return
     default:
   }
 }
 
 function beginWiggle(state: RunState, by: 'person' | 'pedal' | 'itself'): void {
-  const tenthMs = state.setup.frameMs * 10
   state.jack.wiggleStartedBy = by
-  if (state.phase !== 'wiggle') enterPhase(state, 'wiggle')
-  else {
-    state.phaseFromFrame = state.frames
-    state.progressTenths = 0
-    state.changes++
-  }
-  const frames = framesOf(state.setup.sheet.wiggleMs, state.setup.frameMs)
-  restartWiggle(state.jack, state.frames * tenthMs, (state.frames + frames) * tenthMs)
+  enterPhase(state, 'wiggle')
+  startWiggle(state)
 }
 
 /** All strings have what they need: asks for more where the guard band says so, else goes on. */

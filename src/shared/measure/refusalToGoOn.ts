@@ -17,8 +17,9 @@ export function refusalToGoOn(state: RunState): string | null {
       return 'Hold still for a second; the run goes on by itself.'
     case 'wiggle':
       return 'Keep wiggling until the time is over.'
-    case 'strings':
     case 'wiggleReady':
+      return state.plugged === false ? 'Plug in first; then the wiggle can begin.' : null
+    case 'strings':
     case 'entry':
       return null
     case 'done':

@@ -7,6 +7,7 @@ import { NO_FACT, type RuleFact } from './judgeRule.ts'
 import { allNo, allYes, meanOfAverage } from './jackWatch.ts'
 import type { NoiseReadings } from './noiseReadings.ts'
 import { isFinished, type RunState } from './state.ts'
+import { isTipWatched } from './wigglePhase.ts'
 
 const NOT_REACHED: RuleFact = { ...NO_FACT, notTested: 'notReached' }
 const NOT_MEASURABLE: RuleFact = { ...NO_FACT, notTested: 'notMeasurable' }
@@ -183,16 +184,16 @@ function jackFact(state: RunState, rule: Exclude<RuleId, StringRule | NoiseRule>
         rest.batteryMv.frames,
         restContradicts,
       )
-    case 'tipContinuity':
-      return yesNoFact(
-        tipSteady(state),
-        rest.frames + wiggle.tipClosed.yes + wiggle.tipClosed.no,
-        restContradicts,
-      )
+    case 'tipContinuity': {
+      const n = rest.frames + wiggle.tipClosed.yes + wiggle.tipClosed.no
+      return wiggleFact(state, yesNoFact(tipSteady(state), n, restContradicts))
+    }
     case 'disturbanceCount':
-      return valueFact(jack.wiggleDone ? wiggle.count : null, 1, false)
-    case 'disturbanceLongest':
-      return valueFact(jack.wiggleDone ? wiggle.longestTenthMs / 10 : null, wiggle.count, false)
+      return wiggleFact(state, valueFact(jack.wiggleDone ? wiggle.count : null, 1, false))
+    case 'disturbanceLongest': {
+      const longestMs = jack.wiggleDone ? wiggle.longestTenthMs / 10 : null
+      return wiggleFact(state, valueFact(longestMs, wiggle.count, false))
+    }
     case 'contactTip':
       return valueFact(scaled(contact.tip, 1_000_000), 1, false)
     case 'contactRing':
@@ -202,6 +203,13 @@ function jackFact(state: RunState, rule: Exclude<RuleId, StringRule | NoiseRule>
     case 'insulation':
       return valueFact(scaled(jack.insulationKiloOhm, 1000), 1, false)
   }
+}
+
+/** What is read of the wiggle is nothing when the plug was left out, and never within when the tip was not watched. */
+function wiggleFact(state: RunState, fact: RuleFact): RuleFact {
+  if (fact.notTested !== null) return fact
+  if (state.jack.wiggle.endedUnplugged) return { ...fact, invalid: 'disagreesWithState' }
+  return isTipWatched(state) ? fact : { ...fact, notWithin: 'disagreesWithState' }
 }
 
 /** The tip was closed in every frame at rest and in the wiggle; null until both are over or when it is not measured. */

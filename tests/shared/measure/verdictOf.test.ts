@@ -39,6 +39,14 @@ describe('verdictOf()', () => {
     ).toBe('pass')
   })
 
+  it('gives none when no required reject rule is within: nothing was shown', () => {
+    expect(verdictOf([rule('within', 'reject', false), rule('within', 'advise', false)], sound)).toBe('none')
+    expect(verdictOf([rule('within', 'advise', true)], sound)).toBe('none')
+    expect(verdictOf([rule('outside', 'advise', true)], sound)).toBe('none')
+    expect(verdictOf([rule('invalid', 'reject', false)], sound)).toBe('none')
+    expect(verdictOf([rule('within', 'advise', true), rule('within')], sound)).toBe('pass')
+  })
+
   it('gives none when nothing was judged', () => {
     expect(verdictOf([], sound)).toBe('none')
   })
