@@ -48,7 +48,7 @@ export const ERRORS = {
   },
   'serial.invalid': {
     title: 'This is not a serial.',
-    remedy: 'Use capital letters and digits only, 4 to 32 of them.',
+    remedy: 'Use letters and digits only, 4 to 32 of them.',
   },
   'model.unknown': { title: 'There is no such model.', remedy: 'Choose one from the list.' },
   'sheet.none-in-force': {
@@ -113,8 +113,8 @@ export const ERRORS = {
   },
   'run.unknown': { title: 'There is no such run.', remedy: 'Check the address.' },
   'run.serial-busy': {
-    title: 'This serial is being checked on another bench.',
-    remedy: 'Finish it there, or ask its opener or a lead to stop it.',
+    title: 'This serial is being checked just now.',
+    remedy: 'Finish that check, or ask its opener or a lead to stop it.',
   },
   'run.not-open': { title: 'This run has ended.', remedy: 'Open its page to see how; nothing was changed.' },
   'run.action-not-now': {

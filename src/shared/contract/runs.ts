@@ -5,7 +5,11 @@ import { MeasuredRun, Verdict } from './measured.ts'
 import { Model, ThresholdSheet } from './thresholds.ts'
 import { Algorithms, ChannelKind, FrameMs } from './frames.ts'
 
-export const Serial = z.string().regex(/^[A-Z0-9]{4,32}$/, 'capital letters and digits only, 4 to 32 of them')
+/** Stands in capitals; small letters are taken as the capitals they mean. */
+export const Serial = z
+  .string()
+  .toUpperCase()
+  .regex(/^[A-Z0-9]{4,32}$/, 'letters and digits only, 4 to 32 of them')
 
 export const RunReason = z.enum(['new', 'retest', 'afterRework', 'return', 'practice', 'recording'])
 export type RunReason = z.infer<typeof RunReason>

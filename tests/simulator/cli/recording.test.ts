@@ -67,7 +67,7 @@ describe('npm run recording', () => {
   }, 120_000)
 
   it.each<[string, string[], Record<string, string>, number, RegExp]>([
-    ['a serial that is none', ['--serial', 'no serial'], {}, 2, /--serial is not right: capital letters/],
+    ['a serial that is none', ['--serial', 'no serial'], {}, 2, /--serial is not right: letters and digits/],
     ['an option that is not known', ['--fil', 'x.wav'], {}, 2, /--fil/],
     ['a file that is not there', ['--file', '/none.wav'], {}, 1, /none\.wav cannot be opened: ENOENT/],
     [
