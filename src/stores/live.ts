@@ -71,8 +71,8 @@ export const useLiveStore = defineStore('live', () => {
 
   /** A view that came as the answer of a request: the socket may have brought a newer one meanwhile. */
   function accept(view: RunView): void {
-    const known = run.value
-    if (known && known.id === view.id && isOlder(view, known)) return
+    if (view.id !== watchedRun) return
+    if (run.value && isOlder(view, run.value)) return
     run.value = view
   }
 

@@ -82,6 +82,19 @@ describe('useLiveStore()', () => {
     expect(live.run!.storage).toBe('stored')
   })
 
+  test('accept() ignores an answer about a run that is not watched any more', () => {
+    const live = useLiveStore()
+    live.watch(IDS.action)
+    live.accept(view)
+    expect(live.run).toBeNull()
+    live.watch(view.id)
+    live.accept(view)
+    expect(live.run).toEqual(view)
+    live.unwatch()
+    live.accept(view)
+    expect(live.run).toBeNull()
+  })
+
   test('a state from the socket always counts: after a restart the server knows fewer frames', () => {
     const live = useLiveStore()
     live.watch(view.id)
