@@ -1,5 +1,6 @@
 import { createRouter, createWebHistory } from 'vue-router'
 import type { RouteRecordRaw, RouterHistory } from 'vue-router'
+import { cleanCode } from '../composables/useScanTarget.ts'
 import type { Permission } from '../shared/contract/permissions.ts'
 import { useSessionStore } from '../stores/session.ts'
 import { startPlace } from './startPlace.ts'
@@ -69,6 +70,11 @@ export function makeRouter(history: RouterHistory = createWebHistory()) {
     scrollBehavior: (_to, _from, saved) => saved ?? { top: 0 },
   })
   router.beforeEach(async (to) => {
+    // An address that was typed in small letters is the one of the same serial in capitals.
+    const { serial } = to.params
+    if (typeof serial === 'string' && serial !== cleanCode(serial)) {
+      return { ...to, params: { ...to.params, serial: cleanCode(serial) }, replace: true }
+    }
     const session = useSessionStore()
     if (session.status === 'unknown') await session.load()
     // Still unknown: the server is out of reach. The page says so and stays where it was asked for.

@@ -1,9 +1,10 @@
-import { flushPromises, mount } from '@vue/test-utils'
+import { enableAutoUnmount, flushPromises, mount } from '@vue/test-utils'
 import { createPinia, setActivePinia } from 'pinia'
 import { afterEach, beforeEach, expect, test, vi } from 'vitest'
 import { nextTick } from 'vue'
 import { createMemoryHistory, createRouter } from 'vue-router'
 import TopStrip from '../../../../src/components/common/TopStrip.vue'
+import { ApiProblem } from '../../../../src/api/apiProblem.ts'
 import type { LiveState } from '../../../../src/api/socket.ts'
 import type { Role } from '../../../../src/shared/contract/permissions.ts'
 import { permissionsOf } from '../../../../src/shared/contract/permissions.ts'
@@ -91,6 +92,7 @@ async function strip(roles: Role[] = ['installer']) {
   return { shown, router }
 }
 
+enableAutoUnmount(afterEach)
 beforeEach(() => {
   localStorage.setItem('evenstrung.bench', JSON.stringify(BENCH.id))
   fake.state.value = 'connected'
@@ -156,7 +158,8 @@ test('F4 opens the change of person at its first field; Escape closes it and giv
   window.dispatchEvent(new KeyboardEvent('keydown', { key: 'F4' }))
   await flushPromises()
   expect(document.activeElement?.id).toBe('email')
-  await shown.get('#strip-panel').trigger('keydown', { key: 'Escape' })
+  await shown.get('#email').trigger('keydown', { key: 'Escape' })
+  expect(shown.get('#strip-panel').attributes('hidden')).toBeDefined()
   expect(document.activeElement).toBe(shown.get('.place--person').element)
 })
 
@@ -170,4 +173,113 @@ test('a typed serial is opened with Enter and the field gives the keys back', as
   await flushPromises()
   expect(router.currentRoute.value.fullPath).toBe('/check/HL2499999')
   expect(document.activeElement).not.toBe(field.element)
+})
+
+test('the Escape that closes a panel does not reach the bench, wherever the focus is', async () => {
+  const { shown } = await strip()
+  const heard = vi.fn()
+  window.addEventListener('keydown', heard)
+  await shown.get('.place--person').trigger('click')
+  ;(document.activeElement as HTMLElement).blur()
+  document.body.dispatchEvent(new KeyboardEvent('keydown', { key: 'Escape', bubbles: true }))
+  await nextTick()
+  expect(shown.get('#strip-panel').attributes('hidden')).toBeDefined()
+  expect(heard).not.toHaveBeenCalled()
+  document.body.dispatchEvent(new KeyboardEvent('keydown', { key: 'Escape', bubbles: true }))
+  expect(heard).toHaveBeenCalledOnce()
+  window.removeEventListener('keydown', heard)
+})
+
+test('a touch inside a panel leaves it open, one outside closes it', async () => {
+  const { shown } = await strip()
+  await shown.get('.place--person').trigger('click')
+  const isOpen = () => shown.get('#strip-panel').attributes('hidden') === undefined
+  await shown.get('#email').trigger('pointerdown')
+  expect(isOpen()).toBe(true)
+  document.body.dispatchEvent(new Event('pointerdown', { bubbles: true }))
+  await nextTick()
+  expect(isOpen()).toBe(false)
+})
+
+test('a panel closes when the focus goes on to the page', async () => {
+  const { shown } = await strip()
+  await shown.get('.place--person').trigger('click')
+  shown.get<HTMLElement>('.sections a').element.focus()
+  await nextTick()
+  expect(shown.get('#strip-panel').attributes('hidden')).toBeDefined()
+  expect(document.activeElement).toBe(shown.get('.sections a').element)
+})
+
+test('the choice of benches says what each of them listens to', async () => {
+  const { shown } = await strip()
+  fake.benches([
+    BENCH,
+    { ...BENCH, id: '3b3c4d5e-6f70-4182-93a4-b5c6d7e8f901', name: 'Door', channelKind: 'one' },
+  ])
+  await shown.get('.place:not(.place--person)').trigger('click')
+  const [door, window] = shown.findAll('#strip-panel li button').map((button) => button.text())
+  expect(door).toContain('jack only')
+  expect(window).toContain('six channels')
+})
+
+test('the page that waits for a scan has the cursor in the scan field, also after the bench was chosen', async () => {
+  const { shown } = await strip()
+  const field = shown.get('#scan').element
+  expect(document.activeElement).toBe(field)
+  await shown.get('.place:not(.place--person)').trigger('click')
+  await flushPromises()
+  expect(document.activeElement).toBe(shown.find('#strip-panel li button').element)
+  await shown.findAll('#strip-panel li button')[0]!.trigger('click')
+  expect(document.activeElement).toBe(field)
+})
+
+test('typing on the page that waits for a scan goes into the scan field, at a check it does not', async () => {
+  const { shown, router } = await strip()
+  const field = shown.get<HTMLInputElement>('#scan').element
+  const type = () => document.body.dispatchEvent(new KeyboardEvent('keydown', { key: 'h', bubbles: true }))
+  field.blur()
+  type()
+  expect(document.activeElement).toBe(field)
+  await router.push('/check/HL2401873')
+  field.blur()
+  type()
+  expect(document.activeElement).not.toBe(field)
+})
+
+test('the scan field shows the serial of the check, and nothing once it was left', async () => {
+  const { shown, router } = await strip()
+  const field = shown.get<HTMLInputElement>('#scan').element
+  await router.push('/check/HL2401873?run=1')
+  await nextTick()
+  expect(field.value).toBe('HL2401873')
+  await router.push('/instruments')
+  await nextTick()
+  expect(field.value).toBe('')
+})
+
+test('a scan that was refused leaves the serial on the bench in the field', async () => {
+  const { shown, router } = await strip()
+  await router.push('/check/HL2401873?run=1')
+  router.beforeEach((to) => to.params.serial !== 'HL2499999')
+  fake.api.mockResolvedValueOnce({ kind: 'unknownSerial', serial: 'HL2499999' })
+  const field = shown.get<HTMLInputElement>('#scan')
+  await field.setValue('HL2499999')
+  await shown.get('form').trigger('submit')
+  await flushPromises()
+  expect(router.currentRoute.value.params.serial).toBe('HL2401873')
+  expect(field.element.value).toBe('HL2401873')
+})
+
+test('a code that could not be looked up stays to be corrected until the page changes', async () => {
+  const { shown, router } = await strip()
+  fake.api.mockRejectedValueOnce(new ApiProblem('client.offline'))
+  const field = shown.get<HTMLInputElement>('#scan')
+  await field.setValue('HL24O')
+  await shown.get('form').trigger('submit')
+  await flushPromises()
+  expect(field.element.value).toBe('HL24O')
+  field.element.blur()
+  await router.push('/instruments')
+  await flushPromises()
+  expect(field.element.value).toBe('')
 })
