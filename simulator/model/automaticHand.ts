@@ -36,7 +36,8 @@ const LOOK_S = 0.45
 const WIGGLE_S = 7.3
 const ENTRY_PATIENCE_S = 2
 
-const SETTLE_S = 5
+/** Plugged in anew in the middle of a run: supply and coupling capacitors take up to 12 s (trade, arithmetic). */
+const SETTLE_S = 12
 
 const PLUCK_PROMPTS: readonly PromptKey[] = ['dampThenPluck', 'pluckAgain', 'pluckMore']
 /** A plug that fell out, or a bench that was restarted: a person puts it back in first. */
