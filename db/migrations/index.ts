@@ -19,6 +19,7 @@ import * as createRunDetails from './202612010916_create_run_details.ts'
 import * as createRunActions from './202612010917_create_run_actions.ts'
 import * as createTraceSegments from './202612010918_create_trace_segments.ts'
 import * as createCautionAcknowledgements from './202612010919_create_caution_acknowledgements.ts'
+import * as addBenchVerificationSetup from './202612011000_add_bench_verification_setup.ts'
 
 export interface Migration {
   up(knex: Knex): Promise<void>
@@ -47,4 +48,5 @@ export const MIGRATIONS: readonly [string, Migration][] = [
   ['202612010917_create_run_actions', createRunActions],
   ['202612010918_create_trace_segments', createTraceSegments],
   ['202612010919_create_caution_acknowledgements', createCautionAcknowledgements],
+  ['202612011000_add_bench_verification_setup', addBenchVerificationSetup],
 ]

@@ -61,7 +61,7 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
       if (hello.protocolVersion !== PROTOCOL_VERSION)
         throw new AppError('protocol.version', { facts: { spoken: PROTOCOL_VERSION } })
       const bench = await touchBench(knex, benchId, hello, now())
-      const verification = await findVerification(knex, benchId, now())
+      const verification = await findVerification(knex, benchId, now(), hello)
       hub.greet(benchId, socket, hello)
       greeted = true
       const run = board.onBench(benchId)
@@ -93,9 +93,9 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
     on('bench:verify', BenchVerify, async (measured) => {
       const hello = hub.helloOf(benchId)
       if (!hello) throw new AppError('protocol.hello-first')
-      const { channelKind, capabilities } = hello
+      const { channelKind, capabilities, algorithms } = hello
       const calibrationDb = await findCalibration(knex, benchId)
-      const bench = { id: benchId, channelKind, capabilities, calibrationDb }
+      const bench = { id: benchId, channelKind, capabilities, algorithms, calibrationDb }
       const answer = await verifyFromBench(knex, bench, measured, now())
       hub.events.emit('changed', benchId)
       return answer

@@ -1,7 +1,11 @@
 import type { Knex } from 'knex'
 import { z } from 'zod'
+import { Algorithms, ChannelKind } from '../../src/shared/contract/frames.ts'
 import type { BenchHello, BenchVerify } from '../../src/shared/contract/frames.ts'
+import { Capability } from '../../src/shared/contract/rules.ts'
 import { fromJson } from '../runs/runs.queries.ts'
+import { channelsOfKind, isCovered } from './benchSetup.ts'
+import type { VerifiedSetup } from './benchSetup.ts'
 
 export async function findBenchByToken(knex: Knex, tokenHash: Buffer): Promise<string | null> {
   const row = await knex('benches')
@@ -40,28 +44,72 @@ export async function findCalibration(knex: Knex, benchId: string): Promise<numb
   return z.array(z.number()).parse(fromJson(row.calibration_db))
 }
 
-/** The newest verification, when it passed and still holds. */
+export interface Verification {
+  id: string
+  validUntil: Date
+  /** one for each channel */
+  floorDb: number[]
+}
+
+/** The newest verification, when it passed, still holds and was of what the bench says of itself today. */
 export async function findVerification(
   knex: Knex,
   benchId: string,
   at: Date,
-): Promise<{ id: string; validUntil: Date } | null> {
+  hello: VerifiedSetup,
+): Promise<Verification | null> {
   const newest = await knex('bench_verifications')
     .where({ bench_id: benchId })
-    .orderBy('at', 'desc')
-    .first<{ id: string; passed: number; valid_until: Date | null } | undefined>()
+    .orderBy([
+      { column: 'at', order: 'desc' },
+      { column: 'id', order: 'desc' },
+    ])
+    .first<RawVerification | undefined>()
   if (!newest?.passed || !newest.valid_until || newest.valid_until <= at) return null
-  return { id: newest.id, validUntil: newest.valid_until }
+  const verified = verifiedSetupOf(newest)
+  if (!verified || !isCovered(verified, hello)) return null
+  const floorDb = z.array(z.number()).parse(fromJson(newest.floor_db))
+  if (floorDb.length !== channelsOfKind(hello.channelKind)) return null
+  return { id: newest.id, validUntil: newest.valid_until, floorDb }
+}
+
+export interface RawVerifiedSetup {
+  channel_kind: string | null
+  capabilities: unknown
+  algorithms: unknown
+}
+
+interface RawVerification extends RawVerifiedSetup {
+  id: string
+  passed: number
+  valid_until: Date | null
+  floor_db: unknown
+}
+
+/** null: the record does not tell what was verified. */
+export function verifiedSetupOf(raw: RawVerifiedSetup): VerifiedSetup | null {
+  if (raw.channel_kind === null) return null
+  return {
+    channelKind: ChannelKind.parse(raw.channel_kind),
+    capabilities: z.array(Capability).parse(fromJson(raw.capabilities)),
+    algorithms: Algorithms.parse(fromJson(raw.algorithms)),
+  }
 }
 
 export async function findVerificationById(
   knex: Knex,
   id: string,
-): Promise<{ passed: boolean; validUntil: Date | null; reasons: unknown } | null> {
+): Promise<{ benchId: string; passed: boolean; validUntil: Date | null; reasons: string[] } | null> {
   const row = await knex('bench_verifications')
     .where({ id })
-    .first<{ passed: number; valid_until: Date | null; reasons: unknown } | undefined>()
-  return row ? { passed: Boolean(row.passed), validUntil: row.valid_until, reasons: row.reasons } : null
+    .first<{ bench_id: string; passed: number; valid_until: Date | null; reasons: unknown } | undefined>()
+  if (!row) return null
+  return {
+    benchId: row.bench_id,
+    passed: Boolean(row.passed),
+    validUntil: row.valid_until,
+    reasons: z.array(z.string()).parse(fromJson(row.reasons)),
+  }
 }
 
 export interface NewVerification {
@@ -69,6 +117,8 @@ export interface NewVerification {
   benchId: string
   at: Date
   byName: string
+  /** what was verified */
+  setup: VerifiedSetup
   measured: BenchVerify
   passed: boolean
   reasons: string[]
@@ -82,6 +132,9 @@ export async function insertVerification(trx: Knex, verification: NewVerificatio
     bench_id: verification.benchId,
     at: verification.at,
     by_name: verification.byName,
+    channel_kind: verification.setup.channelKind,
+    capabilities: JSON.stringify(verification.setup.capabilities),
+    algorithms: JSON.stringify(verification.setup.algorithms),
     check_standard: verification.measured.checkStandard,
     measurements: JSON.stringify(verification.measured),
     passed: verification.passed,

@@ -1,8 +1,11 @@
 import type { Knex } from 'knex'
 import { z } from 'zod'
 import { ChannelKind } from '../../src/shared/contract/frames.ts'
+import type { BenchHello } from '../../src/shared/contract/frames.ts'
 import { Capability } from '../../src/shared/contract/rules.ts'
 import type { BenchView } from '../../src/shared/contract/workshop.ts'
+import { verifiedSetupOf } from '../bench/bench.queries.ts'
+import { isCovered } from '../bench/benchSetup.ts'
 import { fromJson } from '../runs/runs.queries.ts'
 import type { BenchConnections } from './benchConnections.ts'
 
@@ -17,6 +20,9 @@ interface RawBench {
   verified_at: Date | null
   passed: number | null
   valid_until: Date | null
+  verified_kind: string | null
+  verified_capabilities: unknown
+  verified_algorithms: unknown
   run_id: string | null
   run_serial: string | null
   run_person: string | null
@@ -45,6 +51,9 @@ function benches(knex: Knex): Knex.QueryBuilder {
       'bench_verifications.at as verified_at',
       'bench_verifications.passed',
       'bench_verifications.valid_until',
+      'bench_verifications.channel_kind as verified_kind',
+      'bench_verifications.capabilities as verified_capabilities',
+      'bench_verifications.algorithms as verified_algorithms',
       'runs.id as run_id',
       'instruments.serial as run_serial',
       'users.name as run_person',
@@ -52,7 +61,6 @@ function benches(knex: Knex): Knex.QueryBuilder {
 }
 
 function benchOf(row: RawBench, hub: BenchConnections, now: Date): BenchView {
-  const isVerified = Boolean(row.passed) && row.valid_until !== null && row.valid_until > now
   return {
     id: row.id,
     name: row.name,
@@ -64,10 +72,21 @@ function benchOf(row: RawBench, hub: BenchConnections, now: Date): BenchView {
     connected: hub.isConnected(row.id),
     verifiedAt: row.verified_at?.toISOString() ?? null,
     verifiedUntil: row.valid_until?.toISOString() ?? null,
-    verified: isVerified,
+    verified: isVerified(row, hub.helloOf(row.id), now),
     openRun:
       row.run_id === null ? null : { id: row.run_id, serial: row.run_serial!, person: row.run_person! },
   }
+}
+
+/** While a bench is away its set-up is not known: then only time counts. */
+function isVerified(row: RawBench, hello: BenchHello | null, now: Date): boolean {
+  if (!row.passed || row.valid_until === null || row.valid_until <= now) return false
+  const verified = verifiedSetupOf({
+    channel_kind: row.verified_kind,
+    capabilities: row.verified_capabilities,
+    algorithms: row.verified_algorithms,
+  })
+  return verified !== null && (hello === null || isCovered(verified, hello))
 }
 
 /** Benches that are not retired, by name. */

@@ -68,7 +68,7 @@ export function createRunsService(deps: RunsDeps) {
     if (known) return known
     if (!(await deps.cautionsAcknowledged(person.id))) throw new AppError('cautions.needed')
     const hello = hub.helloOf(request.benchId)
-    const bench = await findBenchSetup(knex, request.benchId, now())
+    const bench = await findBenchSetup(knex, request.benchId, now(), hello)
     if (!bench) throw new AppError('bench.unknown')
     if (!hello) throw new AppError('bench.offline', { facts: { bench: bench.name } })
     const model = await findStartModel(knex, request.serial, request.modelId)

@@ -2,6 +2,8 @@ import { randomUUID } from 'node:crypto'
 import type { Knex } from 'knex'
 import { z } from 'zod'
 import { ThresholdSheet } from '../../src/shared/contract/thresholds.ts'
+import { findVerification } from '../bench/bench.queries.ts'
+import type { VerifiedSetup } from '../bench/benchSetup.ts'
 import { isDuplicate } from '../connect.ts'
 import { AppError } from '../errors.ts'
 import type { Model } from '../../src/shared/contract/thresholds.ts'
@@ -18,12 +20,19 @@ export interface BenchSetup {
   uCalOwnDb: number
   uCalSharedDb: number
   studySDb: number | null
-  /** of the newest verification when it passed and still holds, else null */
+  /** of the newest verification when it passed, still holds and was of the same set-up, else null */
   verificationId: string | null
+  /** one for each channel when verified, else empty */
   floorDb: number[]
 }
 
-export async function findBenchSetup(knex: Knex, benchId: string, at: Date): Promise<BenchSetup | null> {
+/** `hello`: what the bench says of itself today, null when it is not connected. */
+export async function findBenchSetup(
+  knex: Knex,
+  benchId: string,
+  at: Date,
+  hello: VerifiedSetup | null,
+): Promise<BenchSetup | null> {
   const bench = (await knex('benches').where({ id: benchId, retired_at: null }).first()) as
     | {
         name: string
@@ -34,19 +43,15 @@ export async function findBenchSetup(knex: Knex, benchId: string, at: Date): Pro
       }
     | undefined
   if (!bench) return null
-  const newest = await knex('bench_verifications')
-    .where({ bench_id: benchId })
-    .orderBy('at', 'desc')
-    .first<{ id: string; passed: number; valid_until: Date | null; floor_db: unknown } | undefined>()
-  const holds = newest?.passed && newest.valid_until && newest.valid_until > at
+  const verification = hello && (await findVerification(knex, benchId, at, hello))
   return {
     name: bench.name,
     calibrationDb: Numbers.parse(fromJson(bench.calibration_db)),
     uCalOwnDb: bench.u_cal_own_db,
     uCalSharedDb: bench.u_cal_shared_db,
     studySDb: bench.study_s_db,
-    verificationId: holds ? newest.id : null,
-    floorDb: newest ? Numbers.parse(fromJson(newest.floor_db)) : [],
+    verificationId: verification?.id ?? null,
+    floorDb: verification?.floorDb ?? [],
   }
 }
 

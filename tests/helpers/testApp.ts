@@ -4,6 +4,7 @@ import type { Knex } from 'knex'
 import pino from 'pino'
 import type { Logger } from 'pino'
 import request from 'supertest'
+import type { BenchHello } from '../../src/shared/contract/frames.ts'
 import type { Role } from '../../src/shared/contract/permissions.ts'
 import { API, ROUTES } from '../../src/shared/contract/routes.ts'
 import type { RouteKey } from '../../src/shared/contract/routes.ts'
@@ -51,10 +52,13 @@ export function testConfig(env: Record<string, string> = {}): Config {
 /** Benches as the tests say; commands are kept. */
 export function createTestHub() {
   const connected = new Set<string>()
+  const hellos = new Map<string, BenchHello>()
   const commands: { benchId: string; command: SimulationCommand }[] = []
   return {
     connected,
     commands,
+    hellos,
+    helloOf: (benchId: string) => hellos.get(benchId) ?? null,
     isConnected: (benchId: string) => connected.has(benchId),
     simulate: (benchId: string, command: SimulationCommand) => {
       commands.push({ benchId, command })
