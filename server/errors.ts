@@ -43,6 +43,7 @@ export const STATUS_OF: Record<ErrorCode, number> = {
   'bench.unknown': 404,
   'bench.offline': 409,
   'bench.busy': 409,
+  'bench.differs': 409,
   'bench.not-simulated': 409,
   'bench.token': 401,
   'bench.replaced': 409,

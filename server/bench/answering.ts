@@ -45,7 +45,7 @@ export function answering(
     socket.on(event, (...args: unknown[]) => {
       const answer = args.at(-1)
       const message = typeof args[0] === 'function' ? undefined : args[0]
-      void (async () => {
+      const work = async (): Promise<void> => {
         try {
           const parsed = schema.safeParse(message)
           if (!parsed.success) throw shapeProblem(message, parsed.error)
@@ -54,7 +54,10 @@ export function answering(
         } catch (error) {
           refuse(error, event, answer)
         }
-      })()
+      }
+      work().catch((error: unknown) =>
+        deps.log.error({ err: error, event }, 'a message could not be answered'),
+      )
     })
   }
 }

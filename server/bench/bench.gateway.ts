@@ -5,11 +5,19 @@ import type { Namespace } from 'socket.io'
 import { BenchHello, BenchVerify, FrameBatch, PROTOCOL_VERSION } from '../../src/shared/contract/frames.ts'
 import type { BenchToServer, ServerToBench } from '../../src/shared/contract/frames.ts'
 import { AppError, problemOf } from '../errors.ts'
+import type { OpenRun } from '../runs/openRun.ts'
 import type { RunBoard } from '../runs/runBoard.ts'
 import { answering } from './answering.ts'
 import { orderOf, WINDOW_FRAMES } from './benchHub.ts'
 import type { BenchHub, BenchSocket } from './benchHub.ts'
-import { findBenchByToken, findCalibration, findVerification, touchBench } from './bench.queries.ts'
+import {
+  findBenchByToken,
+  findCalibration,
+  findOutcome,
+  findVerification,
+  touchBench,
+} from './bench.queries.ts'
+import { differencesOf } from './benchSetup.ts'
 import { verifyFromBench } from './verifyFromBench.ts'
 
 export interface BenchGatewayDeps {
@@ -33,40 +41,82 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
   const { knex, hub, board, now } = deps
 
   namespace.use((socket, next) => {
+    const refuse = (error: unknown): void => {
+      const problem = problemOf(error)
+      deps.refused(problem.code)
+      next(Object.assign(new Error(problem.code), { data: problem }))
+    }
+    const accept = (benchId: string): void => {
+      socket.data.benchId = benchId
+      next()
+    }
     identify(knex, socket.handshake.auth as unknown)
-      .then((benchId) => {
-        socket.data.benchId = benchId
-        next()
-      })
-      .catch((error: unknown) => {
-        const problem = problemOf(error)
-        deps.refused(problem.code)
-        next(Object.assign(new Error(problem.code), { data: problem }))
-      })
+      .then(accept, refuse)
+      .catch((error: unknown) => deps.log.error({ err: error }, 'a bench could not be let in'))
   })
 
   namespace.on('connection', (socket: BenchSocket) => {
     const { benchId } = socket.data
     const log = deps.log.child({ bench: benchId })
     const on = answering(socket, { log, refused: deps.refused }, 'bench:refused')
-    let greeted = false
+    let greeting: BenchHello | null = null
     let inFlight = false
-    hub.connect(benchId, socket)
-    socket.on('disconnect', () => {
-      hub.disconnect(benchId, socket)
-      board.benchChanged(benchId)
-    })
+
+    /** What nobody waits for: a fault there is logged and goes no further. */
+    const quietly = (work: () => void): void => {
+      try {
+        work()
+      } catch (error) {
+        log.error({ err: error }, 'a bench could not be told')
+      }
+    }
+
+    /** The run that takes this bench's frames; one that is open and not measured here is taken up again. */
+    const runFor = async (held: string | null): Promise<OpenRun | null> => {
+      const there = board.onBench(benchId)
+      if (there || held === null) return there ?? null
+      if ((await findOutcome(knex, benchId, held)) !== 'open') return board.onBench(benchId) ?? null
+      await board.adopt(held)
+      return board.onBench(benchId) ?? null
+    }
+
+    /** A bench forgets what it holds only when it is told that the run has ended. */
+    const tellEnd = async (runId: string): Promise<void> => {
+      const end = await findOutcome(knex, benchId, runId)
+      if (end === 'open' || board.find(runId)) return
+      // A run that is not there takes no frames either.
+      const { outcome, verdict } = end ?? { outcome: 'interrupted', verdict: null }
+      setImmediate(() => quietly(() => hub.endedBefore(benchId, { run: runId, outcome, verdict })))
+    }
+
+    quietly(() => hub.connect(benchId, socket))
+    socket.on('disconnect', () =>
+      quietly(() => {
+        hub.disconnect(benchId, socket)
+        board.benchChanged(benchId)
+      }),
+    )
 
     on('bench:hello', BenchHello, async (hello) => {
+      greeting = null
       if (hello.protocolVersion !== PROTOCOL_VERSION)
         throw new AppError('protocol.version', { facts: { spoken: PROTOCOL_VERSION } })
+      const held = hello.holding?.run ?? null
+      const run = await runFor(held)
+      try {
+        refuseOther(run, hello)
+      } catch (error) {
+        hub.ungreet(benchId, socket)
+        throw error
+      }
       const bench = await touchBench(knex, benchId, hello, now())
       const verification = await findVerification(knex, benchId, now(), hello)
+      if (held !== null && held !== run?.row.id) await tellEnd(held)
       hub.greet(benchId, socket, hello)
-      greeted = true
-      const run = board.onBench(benchId)
+      greeting = hello
       board.benchChanged(benchId)
-      if (run) queueMicrotask(() => hub.prompt(run))
+      // After the answer, which brings the order that the prompt belongs to.
+      if (run) setImmediate(() => quietly(() => hub.prompt(run)))
       return {
         benchId,
         name: bench.name,
@@ -77,13 +127,17 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
     })
 
     on('bench:frames', FrameBatch, async (batch) => {
-      if (!greeted) throw new AppError('protocol.hello-first')
+      if (!greeting) throw new AppError('protocol.hello-first')
       if (inFlight) throw new AppError('frames.in-flight')
-      const run = board.onBench(benchId)
-      if (!run || run.row.id !== batch.run)
-        throw new AppError(run ? 'frames.foreign' : 'run.not-open', { facts: { run: run?.row.id ?? null } })
       inFlight = true
       try {
+        const run = board.onBench(benchId) ?? (await runFor(batch.run))
+        if (!run) {
+          await tellEnd(batch.run)
+          throw new AppError('run.not-open', { facts: { run: null } })
+        }
+        if (run.row.id !== batch.run) throw new AppError('frames.foreign', { facts: { run: run.row.id } })
+        refuseOther(run, greeting)
         return { ...(await board.takeFrames(run, batch)), window: WINDOW_FRAMES }
       } finally {
         inFlight = false
@@ -106,6 +160,14 @@ export function openBenchGateway(namespace: BenchNamespace, deps: BenchGatewayDe
   board.events.on('changed', (run) => hub.prompt(run))
   board.events.on('committed', (run) => hub.committed(run))
   board.events.on('ended', (run) => hub.ended(run))
+}
+
+/** Frames of another set-up cannot be measured as the run began: nothing of it is mixed into the trace. */
+function refuseOther(run: OpenRun | null, hello: BenchHello): void {
+  if (!run || run.ending) return
+  const differs = differencesOf(hello, run.row.setup)
+  if (differs.length > 0)
+    throw new AppError('bench.differs', { facts: { run: run.row.id, differs: differs.join(', ') } })
 }
 
 async function identify(knex: Knex, auth: unknown): Promise<string> {

@@ -1,7 +1,7 @@
 import type { Knex } from 'knex'
 import { z } from 'zod'
 import { Algorithms, ChannelKind } from '../../src/shared/contract/frames.ts'
-import type { BenchHello, BenchVerify } from '../../src/shared/contract/frames.ts'
+import type { BenchHello, BenchVerify, RunEnded } from '../../src/shared/contract/frames.ts'
 import { Capability } from '../../src/shared/contract/rules.ts'
 import { fromJson } from '../runs/runs.queries.ts'
 import { channelsOfKind, isCovered } from './benchSetup.ts'
@@ -110,6 +110,22 @@ export async function findVerificationById(
     validUntil: row.valid_until,
     reasons: z.array(z.string()).parse(fromJson(row.reasons)),
   }
+}
+
+/** How a run of this bench ended; 'open' while it has not, null when there is no such run. */
+export async function findOutcome(
+  knex: Knex,
+  benchId: string,
+  runId: string,
+): Promise<'open' | { outcome: RunEnded['outcome']; verdict: RunEnded['verdict'] } | null> {
+  const row = await knex('runs')
+    .where({ id: runId, bench_id: benchId })
+    .first<{ status: 'open' | RunEnded['outcome']; verdict: RunEnded['verdict'] } | undefined>(
+      'status',
+      'verdict',
+    )
+  if (!row) return null
+  return row.status === 'open' ? 'open' : { outcome: row.status, verdict: row.verdict }
 }
 
 export interface NewVerification {

@@ -1,8 +1,11 @@
 import { EventEmitter } from 'node:events'
 import type { Socket } from 'socket.io'
+import { z } from 'zod'
+import { Problem } from '../../src/shared/contract/errors.ts'
 import type {
   BenchHello,
   BenchToServer,
+  RunEnded,
   RunOrder,
   RunPrompt,
   ServerToBench,
@@ -20,6 +23,10 @@ interface Connection {
 }
 
 const SIMULATE_TIMEOUT_MS = 3000
+const SimulateAnswer = z.union([
+  z.object({ ok: z.literal(true) }),
+  z.object({ ok: z.literal(false), problem: Problem }),
+])
 /** Frames in a batch: the server sets it, the bench keeps to it. */
 export const WINDOW_FRAMES = 200
 
@@ -33,6 +40,7 @@ export class BenchHub {
   connect(benchId: string, socket: BenchSocket): void {
     const older = this.connections.get(benchId)
     this.connections.set(benchId, { socket, hello: null })
+    this.prompts.delete(benchId)
     if (older) {
       older.socket.emit('bench:replaced', problemOf(new AppError('bench.replaced')))
       older.socket.disconnect(true)
@@ -50,6 +58,14 @@ export class BenchHub {
     const connection = this.connections.get(benchId)
     if (connection?.socket !== socket) throw new AppError('bench.replaced')
     connection.hello = hello
+    this.events.emit('changed', benchId)
+  }
+
+  /** A hello that was refused takes the place of one that was not: the bench is not ready any more. */
+  ungreet(benchId: string, socket: BenchSocket): void {
+    const connection = this.connections.get(benchId)
+    if (connection?.socket !== socket || !connection.hello) return
+    connection.hello = null
     this.events.emit('changed', benchId)
   }
 
@@ -94,16 +110,21 @@ export class BenchHub {
     this.events.emit('changed', run.row.benchId)
   }
 
+  /** Of a run that ended while the bench was away. */
+  endedBefore(benchId: string, message: RunEnded): void {
+    this.connections.get(benchId)?.socket.emit('run:ended', message)
+  }
+
   async simulate(benchId: string, command: SimulationCommand): Promise<void> {
     const connection = this.connections.get(benchId)
     if (!connection) throw new AppError('bench.offline')
-    const answer = await connection.socket
+    const answer: unknown = await connection.socket
       .timeout(SIMULATE_TIMEOUT_MS)
       .emitWithAck('bench:simulate', command)
-      .catch(() => {
-        throw new AppError('bench.offline')
-      })
-    if (!answer.ok) throw new AppError(answer.problem.code, { detail: answer.problem.detail })
+      .catch(() => null)
+    const parsed = SimulateAnswer.safeParse(answer)
+    if (!parsed.success) throw new AppError('bench.offline')
+    if (!parsed.data.ok) throw new AppError(parsed.data.problem.code, { detail: parsed.data.problem.detail })
   }
 
   /** Cuts a bench off, for example when its token was replaced. */

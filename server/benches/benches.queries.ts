@@ -104,6 +104,15 @@ export async function findBench(
   return row ? benchOf(row, hub, now) : null
 }
 
+/** Who opened the run that is open on this bench. */
+export async function findOpener(knex: Knex, benchId: string): Promise<{ id: string; name: string } | null> {
+  const row = await knex('runs')
+    .join('users', 'users.id', 'runs.opened_by')
+    .where('runs.open_bench_id', benchId)
+    .first<{ id: string; name: string } | undefined>('users.id', 'users.name')
+  return row ?? null
+}
+
 export async function findBenchByCode(
   knex: Knex,
   code: string,

@@ -204,8 +204,8 @@ class Client implements BenchClient {
     this.verifiedUntil = answer.verifiedUntil
     this.log(`Connected as ${answer.name}`)
     this.source.serverSeen?.(true)
+    // Without an order what is held stays: its run may be judged and not stored yet.
     if (answer.order) this.begin(answer.order)
-    else if (this.run) this.forget()
     if (!answer.verified) this.verify()
   }
 
@@ -298,9 +298,11 @@ class Client implements BenchClient {
         if (typeof next !== 'number' || !run.goOnFrom(next)) this.helloAgain()
         return
       case 'run.not-open':
-      case 'run.unknown':
         // kept until the server says how it ended: it may ask again after its own restart
         run.close()
+        return
+      case 'run.unknown':
+        this.forget()
         return
       case 'frames.foreign':
         run.close()

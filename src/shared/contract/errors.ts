@@ -64,6 +64,10 @@ export const ERRORS = {
     title: 'Another run is open on this bench.',
     remedy: 'Finish it there, or ask its opener or a lead to stop it.',
   },
+  'bench.differs': {
+    title: 'The bench is set up otherwise than when its run began.',
+    remedy: 'Set it up as before, or let the opener or a lead stop the run.',
+  },
   'bench.not-simulated': {
     title: 'This bench is a real one.',
     remedy: 'Only a simulated bench takes this command.',

@@ -191,7 +191,7 @@ export const ROUTES = {
     body: SimulationCommand,
     answer: Nothing,
     status: 200,
-    errors: ['bench.unknown', 'bench.offline', 'bench.not-simulated'],
+    errors: ['bench.unknown', 'bench.offline', 'bench.not-simulated', 'run.not-yours'],
   }),
 
   'instruments.list': contract({

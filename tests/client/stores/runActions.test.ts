@@ -30,6 +30,7 @@ beforeEach(() => {
   vi.useFakeTimers()
   setActivePinia(createPinia())
   server.api.mockReset()
+  useLiveStore().watch(view.id)
   useLiveStore().accept(view)
 })
 afterEach(() => {

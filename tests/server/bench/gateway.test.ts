@@ -1,9 +1,10 @@
 import { randomUUID } from 'node:crypto'
 import { afterAll, afterEach, beforeAll, beforeEach, expect, test } from 'vitest'
 import { MAX_BATCH_FRAMES } from '../../../src/shared/contract/frames.ts'
-import type { FramesAnswer } from '../../../src/shared/contract/frames.ts'
+import type { BenchHello, FramesAnswer } from '../../../src/shared/contract/frames.ts'
 import type { Problem } from '../../../src/shared/contract/errors.ts'
-import { batchOf, quietFrame, sayHello, sendFrames, startOf } from '../../helpers/benchTalk.ts'
+import { batchOf, helloOf, quietFrame, sayHello, sendFrames, startOf } from '../../helpers/benchTalk.ts'
+import { demoId } from '../../../db/seeds/demo.ts'
 import { once, startTestServer } from '../../helpers/runningServer.ts'
 import type { BenchClient, TestPerson, TestServer } from '../../helpers/runningServer.ts'
 
@@ -31,10 +32,7 @@ beforeEach(async () => {
 })
 
 afterEach(async () => {
-  await lead.call('runs.act', {
-    params: { id: run },
-    body: { id: randomUUID(), action: { kind: 'stop', reason: 'test over' } },
-  })
+  if (at.server.board.find(run)) await stop()
   await expect.poll(() => at.server.board.find(run)).toBeUndefined()
   bench.disconnect()
 })
@@ -191,3 +189,97 @@ test('a restarted server wants the frames that were not committed, and keeps wha
   expect(view.actions).toMatchObject([{ id: action.id, frame: 100 }])
   expect(view.measured.entered).toMatchObject([{ rule: 'contactTip', value: 0.02 }])
 })
+
+test('a connection that takes over is told what the person is asked to do', async () => {
+  const newer = at.bench(at.benchTokens.window!)
+  const first = once(newer, 'run:prompt')
+  await sayHello(newer)
+  const prompt = await first
+  expect(prompt).toMatchObject({ run })
+  const newest = at.bench(at.benchTokens.window!)
+  const again = once(newest, 'run:prompt')
+  await sayHello(newest)
+  expect(await again).toEqual(prompt)
+})
+
+const otherSetups: [string, Partial<BenchHello>][] = [
+  ['channelKind', { channelKind: 'one' }],
+  ['frameMs', { frameMs: 5 }],
+  ['mainsHz', { mainsHz: 60 }],
+  ['capabilities', { capabilities: ['sixLevels'] }],
+  ['algorithms', { algorithms: { test: '2' } }],
+  ['frameMs, mainsHz', { frameMs: 5, mainsHz: 60 }],
+]
+
+test.each(otherSetups)('a bench with other %s may not go on with a run', async (differs, more) => {
+  await sendFrames(bench, batchOf(run, 0, 10))
+  const hello = await sayHello(bench, { ...more, holding: { run, from: 0 } })
+  expect(hello).toMatchObject({ ok: false, problem: { code: 'bench.differs', facts: { run, differs } } })
+  expect(codeOf(await sendFrames(bench, batchOf(run, 10, 5)))).toBe('protocol.hello-first')
+  expect(at.server.board.find(run)!.next).toBe(10)
+  const window = (await installer.call('benches.list')).items.find((item) => item.name === 'Window')!
+  expect(window).toMatchObject({ connected: false, channelKind: 'six' })
+})
+
+test('a bench that can do more than when the run began goes on with it', async () => {
+  const { capabilities } = helloOf()
+  expect(await sayHello(bench, { capabilities: [...capabilities, 'pedal'] })).toMatchObject({
+    ok: true,
+    order: { run },
+  })
+  expect(codeOf(await sendFrames(bench, batchOf(run, 0, 5)))).toBe('ok')
+})
+
+async function stop(): Promise<void> {
+  await lead.call('runs.act', {
+    params: { id: run },
+    body: { id: randomUUID(), action: { kind: 'stop', reason: 'enough' } },
+  })
+}
+
+test('a bench that was away when its run ended is told so at its hello', async () => {
+  await sendFrames(bench, batchOf(run, 0, 10))
+  bench.disconnect()
+  await stop()
+  await expect.poll(() => at.server.board.find(run)).toBeUndefined()
+  const back = at.bench(at.benchTokens.window!)
+  const ended = once(back, 'run:ended')
+  expect(await sayHello(back, { holding: { run, from: 0 } })).toMatchObject({ ok: true, order: null })
+  expect(await ended).toEqual({ run, outcome: 'stopped', verdict: 'none' })
+})
+
+test('a bench that sends frames of a run that has ended is told so', async () => {
+  await stop()
+  await expect.poll(() => at.server.board.find(run)).toBeUndefined()
+  const ended = once(bench, 'run:ended')
+  expect(codeOf(await sendFrames(bench, batchOf(run, 0, 5)))).toBe('run.not-open')
+  expect(await ended).toMatchObject({ run, outcome: 'stopped' })
+})
+
+test('a hello while the run is judged and not stored brings neither an order nor its end', async () => {
+  const open = at.server.board.find(run)!
+  let store: () => void = () => undefined
+  const stored = new Promise<void>((resolve) => (store = resolve))
+  void open.storing.add(() => stored)
+  await stop()
+  const messages: string[] = []
+  bench.onAny((event: string) => messages.push(event))
+  expect(await sayHello(bench, { holding: { run, from: 0 } })).toMatchObject({ ok: true, order: null })
+  expect(codeOf(await sendFrames(bench, batchOf(run, 0, 5)))).toBe('run.not-open')
+  expect(messages).not.toContain('run:ended')
+  const ended = once(bench, 'run:ended')
+  store()
+  expect(await ended).toMatchObject({ run, outcome: 'stopped' })
+})
+
+test.each([undefined, null, 'yes', {}, { ok: false }, { ok: false, problem: { code: 'nonsense' } }])(
+  'a simulated bench that answers %j counts as offline',
+  async (answer) => {
+    bench.on('bench:simulate', (_, reply) => reply(answer as never))
+    const command = installer.call('benches.simulate', {
+      params: { id: demoId('bench window') },
+      body: { kind: 'damp' },
+    })
+    await expect(command).rejects.toMatchObject({ problem: { code: 'bench.offline' } })
+  },
+)

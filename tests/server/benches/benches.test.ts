@@ -1,4 +1,5 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest'
+import { fromJson } from '../../../server/runs/runs.queries.ts'
 import { API } from '../../../src/shared/contract/routes.ts'
 import { BenchView } from '../../../src/shared/contract/workshop.ts'
 import {
@@ -87,5 +88,36 @@ describe('POST /benches/:id/simulation', () => {
     expect((await simulate(id).expect(409)).body.code).toBe('bench.not-simulated')
     const unknown = '0b8f7d1e-6c58-4f0c-9a3e-111111111111'
     expect((await simulate(unknown).expect(404)).body.code).toBe('bench.unknown')
+  })
+
+  it('lets only the opener of the run on it, or a lead, command a bench', async () => {
+    const { knex } = test
+    const benchId = await addBench(knex, { name: 'Busy', code: 'BENCH13' })
+    test.hub.connected.add(benchId)
+    const modelId = await addModel(knex)
+    const instrumentId = await addInstrument(knex, modelId, 'HL2400002', at(0))
+    const sheetId = await addRevision(knex, modelId, { no: 1, status: 'inForce', inForceFrom: at(0) })
+    await addOpenRun(knex, { instrumentId, modelId, benchId, sheetId, userId: person.id })
+    const command = async (of: TestPerson) =>
+      (await signedInAgent(test.app, of.email))
+        .post(`${API}/benches/${benchId}/simulation`)
+        .send({ kind: 'damp' })
+    const refused = await command(await addPerson(test, ['installer']))
+    expect(refused.status).toBe(403)
+    expect(refused.body).toMatchObject({ code: 'run.not-yours', facts: { person: person.name } })
+    expect((await command(person)).status).toBe(200)
+    expect((await command(await addPerson(test, ['lead']))).status).toBe(200)
+  })
+
+  it('keeps in the audit trail which instrument was placed by whom', async () => {
+    const id = await addBench(test.knex, { name: 'Placed', code: 'BENCH14' })
+    test.hub.connected.add(id)
+    const place = { kind: 'place', seed: 7, faults: [], scatterDb: 1 }
+    await simulate(id).expect(200)
+    await agent.post(`${API}/benches/${id}/simulation`).send(place).expect(200)
+    const entries = await test.knex('audit_entries').where({ subject_id: id })
+    expect(entries).toHaveLength(1)
+    expect(entries[0]).toMatchObject({ action: 'bench.placed', user_id: person.id, actor: person.name })
+    expect(fromJson(entries[0].details)).toEqual(place)
   })
 })
