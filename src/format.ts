@@ -84,7 +84,9 @@ export function formatMa(milliampere: Value): string {
   return withUnit(formatNumber(milliampere, 2), 'mA')
 }
 
+/** From a milliampere on in mA. */
 export function formatUa(microampere: Value): string {
+  if (microampere != null && Math.abs(microampere) >= 999.995) return formatMa(microampere / 1000)
   return withUnit(formatNumber(microampere, 2), '\u00b5A')
 }
 

@@ -8,6 +8,7 @@ import type {
   StringState,
   Verdict,
 } from './shared/contract/measured.ts'
+import type { ChannelKind } from './shared/contract/frames.ts'
 import type { RunReason, RunStatus, RunView, RunConditions } from './shared/contract/runs.ts'
 import type { ErrorCode } from './shared/contract/errors.ts'
 import { ERRORS } from './shared/contract/errors.ts'
@@ -48,7 +49,7 @@ export const PROMPT_HINTS: Record<PromptKey, string> = {
   muteAll: 'Felt or flat hand over all six. It starts by itself once they are quiet.',
   keepMuted: 'The noise is being measured. Touch nothing else.',
   dampThenPluck: 'One clean pluck. Any other string is fine too, the bench tells which.',
-  pluckAgain: 'The last one did not count; the list says why.',
+  pluckAgain: 'The last one did not count. Damp all, then one clean pluck.',
   pluckMore: 'These plucks lie too far apart or too near a limit. More of them will settle it.',
   getReadyToWiggle: 'It starts by itself in a moment; the pedal or Space starts it now.',
   wiggleNow: 'Up, down, left, right, then all the way round.',
@@ -156,7 +157,8 @@ export const WARNINGS: Record<MeasuredRun['warnings'][number], TextPair> = {
   notYetQuiet: { title: 'Not quiet yet.', remedy: 'Mute all strings and keep still.' },
   ruleNotMeasurable: {
     title: 'This bench cannot measure every rule.',
-    remedy: 'The missing values can be typed in at the end.',
+    remedy:
+      'What a meter can read may be typed in before the wiggle ends: \u2018Enter a reading by hand\u2019.',
   },
   controlsNotSet: {
     title: 'Controls were not said to be set.',
@@ -173,6 +175,12 @@ export const RUN_REASONS: Record<RunReason, string> = {
   return: 'Return',
   practice: 'Practice',
   recording: 'Recording',
+}
+
+/** Runs that are kept and shown, and enter no verdict of the workshop's figures. */
+export const UNCOUNTED: Partial<Record<RunReason, string>> = {
+  practice: 'Practice, counts for nothing',
+  recording: 'Recording, counts for nothing',
 }
 
 export const RUN_STATUSES: Record<RunStatus, string> = {
@@ -200,6 +208,14 @@ export const MUTES: Record<RunConditions['mute'], string> = { felt: 'Felt', hand
 export function ruleName(rule: RuleId): string {
   return RULES[rule].name
 }
+
+/** As ruleName, and for S/N the point at which level and noise were both read. */
+export function ruleNameOn(rule: RuleId, channelKind: ChannelKind): string {
+  if (rule === 'snA') return `S/N A ${AT_POINT[channelKind]}, worst`
+  if (rule === 'snFlat') return `S/N ${AT_POINT[channelKind]}, worst`
+  return ruleName(rule)
+}
+const AT_POINT: Record<ChannelKind, string> = { six: 'at each element', one: 'at the jack' }
 
 /** What became of the live connection. */
 export const LIVE_STATES = {

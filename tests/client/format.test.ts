@@ -67,6 +67,8 @@ test('formatOhm() changes to milliohm below one ohm', () => {
 test('formatValue() has a unit for every unit of the contract', () => {
   expect(formatValue(3.8, 'mA')).toBe('3.80 mA')
   expect(formatUa(0.25)).toBe('0.25 \u00b5A')
+  expect(formatUa(999.9)).toBe('999.90 \u00b5A')
+  expect(formatUa(3800)).toBe('3.80 mA')
   expect(formatMohm(250)).toBe('250 M\u03a9')
   expect(formatValue(8.9, 'V')).toBe('8.90 V')
   expect(formatValue(12.34, 'ms')).toBe('12.3 ms')

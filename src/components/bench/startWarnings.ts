@@ -18,16 +18,26 @@ export function startWarnings(
   const sheet = model?.sheet
   if (bench && sheet) {
     const missing = sheet.rules.filter((entry) => !capabilitiesCover(entry.rule, bench.capabilities))
-    const byHand = missing
-      .filter((entry) => isEnterableByHand(entry.rule))
-      .map((entry) => ruleName(entry.rule))
+    const namesByHand = (required: boolean) =>
+      missing
+        .filter((entry) => isEnterableByHand(entry.rule) && entry.required === required)
+        .map((entry) => ruleName(entry.rule))
+    const asked = namesByHand(true)
+    const offered = namesByHand(false)
     const never = missing
       .filter((entry) => !isEnterableByHand(entry.rule))
       .map((entry) => ruleName(entry.rule))
-    if (byHand.length > 0) {
+    if (asked.length > 0) {
       warnings.push({
-        title: `This bench cannot measure: ${byHand.join('; ')}.`,
+        title: `This bench cannot measure: ${asked.join('; ')}.`,
         remedy: 'Have a meter ready; the readings are typed in at the end.',
+      })
+    }
+    if (offered.length > 0) {
+      warnings.push({
+        title: `This bench cannot measure: ${offered.join('; ')}.`,
+        remedy:
+          'Not required. They may be typed in during the check, before the wiggle ends: \u2018Enter a reading by hand\u2019.',
       })
     }
     if (never.length > 0) {

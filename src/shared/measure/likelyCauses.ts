@@ -56,7 +56,13 @@ const MOST = 3
 export function likelyCauses(measured: MeasuredRun, setup: Pick<RunSetup, 'model'>): LikelyCause[] {
   const outside = measured.results.filter((result) => result.result === 'outside')
   if (outside.length === 0) return []
-  return [...levelCauses(measured, setup, outside), ...electricalCauses(measured, outside)].slice(0, MOST)
+  const fromLevels = levelCauses(measured, setup, outside)
+  // No power names the battery itself.
+  const isPowerTold = fromLevels.some(({ key }) => key === 'noPower')
+  const fromRest = electricalCauses(measured, outside).filter(
+    ({ key }) => !(isPowerTold && key === 'batteryLow'),
+  )
+  return [...fromLevels, ...fromRest].slice(0, MOST)
 }
 
 function levelCauses(

@@ -113,13 +113,13 @@ describe('RunView', () => {
       .find((row) => /^Balance\s*4 D/.test(row.text()))!
     expect(low.findAll('td').map((cell) => cell.text())).toEqual([
       '4 D',
+      'outside',
       '\u22123.3 dB',
       '\u00b10.7',
       '3',
       '\u22122.5 to +2.5 dB',
       '\u22120.8 dB',
       '2 %',
-      'outside',
       'beyond the limit',
     ])
   })
@@ -175,6 +175,12 @@ describe('RunView', () => {
     expect(wrapper!.find('.now').exists()).toBe(false)
     expect(wrapper!.get('.outcome').text()).toBe('Fail')
     expect(wrapper!.text()).toContain('Compute again')
+  })
+
+  test('says beside the verdict that a practice run counts for nothing', async () => {
+    outside.answers['runs.read'] = () => ({ ...sealedFail(), reason: 'practice' })
+    await open()
+    expect(wrapper!.get('.outcome').text()).toContain('Practice, counts for nothing')
   })
 
   test('gives the reason of a stopped run', async () => {

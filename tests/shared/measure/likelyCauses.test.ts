@@ -73,6 +73,10 @@ describe('likelyCauses()', () => {
   test('tells apart why all six are silent', () => {
     const supply = { pluggedMa: 0, unpluggedUa: 0, batteryV: 9 }
     expect(keys(allSilent({ supply, jack: { ...jack, pluggedClosed: true } }))).toEqual(['noPower'])
+    const spent = [...allSilent({}).results, aResult('battery', 5.2, { sheet })]
+    expect(keys(allSilent({ supply, jack: { ...jack, pluggedClosed: true }, results: spent }))).toEqual([
+      'noPower',
+    ])
     expect(keys(allSilent({ supply, jack: { ...jack, pluggedClosed: false } }))).toEqual(['ringNotClosed'])
     expect(keys(allSilent({ supply: { ...supply, pluggedMa: 3.8 } }))).toEqual(['stripShorted'])
     expect(

@@ -205,9 +205,59 @@ describe('LiveRun', () => {
     expect(wrapper!.text()).not.toContain('Plucked, nothing came')
   })
 
-  test('asks to leave it plugged in while it is judged and not stored', async () => {
-    show(judgedNotStored())
-    expect(wrapper!.get('h1').text()).toBe('Judged, not yet stored: leave it plugged in')
+  test('says that a repeated string is set aside', async () => {
+    outside.api.mockResolvedValue(liveWithLowString())
+    show(liveWithLowString())
+    await press('r', 'KeyR')
+    await press('2', 'Digit2')
+    expect(wrapper!.get('.notice').text()).toBe('String 4 set aside. Pluck it again.')
+  })
+
+  test('counts what was plucked and not heard', async () => {
+    const before = liveAt('strings')
+    const strings = before.measured.strings.map((s) => (s.stringNo === 4 ? { ...s, noSignalCount: 1 } : s))
+    outside.api.mockResolvedValue({ ...before, measured: { ...before.measured, strings } })
+    show(before)
+    await press(' ', 'Space')
+    expect(wrapper!.get('.notice').text()).toBe('String 4: nothing came, 1 of 3.')
+  })
+
+  test('keeps why the last pluck was dropped in the hint', () => {
+    show(liveWithLowString())
+    expect(wrapper!.get('.hint').text()).toBe(
+      'The last pluck did not count. Another string still rang. Damp all first.',
+    )
+  })
+
+  test('says in the line above that a practice run counts for nothing', () => {
+    show({ ...liveAt('strings'), reason: 'practice' })
+    expect(wrapper!.get('.context').text()).toContain('Practice, counts for nothing')
+  })
+
+  test('tells whoever did it before by whom it was taken over', () => {
+    const view = liveAt('strings')
+    const taken = {
+      id: view.id,
+      no: 1,
+      frame: 500,
+      userId: view.openedBy.id,
+      person: view.openedBy.name,
+      at: view.openedAt,
+      action: { kind: 'changePerson', person: view.openedBy.name },
+    }
+    show({ ...view, actions: [taken] }, false)
+    expect(wrapper!.get('.notice').text()).toBe('Bench hand has taken this check over. You are watching.')
+  })
+
+  test('asks to leave it plugged in once storing takes longer than a second', async () => {
+    const view = judgedNotStored()
+    useLiveStore().watch(view.id)
+    ;(outside.handlers as RunHandlers).onView(view)
+    wrapper = mount(LiveRun, { props: { view, isMine: true }, attachTo: document.body })
+    await vi.advanceTimersByTimeAsync(900)
+    expect(wrapper.get('h1').text()).toBe('Done')
+    await vi.advanceTimersByTimeAsync(200)
+    expect(wrapper.get('h1').text()).toBe('Judged, not yet stored: leave it plugged in')
     await press(' ', 'Space')
     expect(acted()).toEqual([])
   })

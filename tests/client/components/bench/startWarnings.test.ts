@@ -37,10 +37,23 @@ describe('startWarnings()', () => {
     const capabilities = aSetup().capabilities.filter((one) => !['battery', 'disturbances'].includes(one))
     const warnings = startWarnings(bench({ capabilities }), model(aSheet()), aged)
     expect(warnings[0]!.title).toBe('This bench cannot measure: Battery under load.')
+    expect(warnings[0]!.remedy).toContain('typed in at the end')
     expect(warnings[1]!.title).toBe(
       'Not tested on this bench: Contact disturbances; Longest contact disturbance.',
     )
     expect(warnings[1]!.remedy).toContain('the verdict will be none')
+  })
+
+  test('says of what is not required that it may be typed in during the check', () => {
+    const capabilities = aSetup().capabilities.filter((one) => one !== 'battery')
+    const sheet = aSheet()
+    const rules = sheet.rules.map((entry) => ({
+      ...entry,
+      required: entry.rule !== 'battery' && entry.required,
+    }))
+    const [warning] = startWarnings(bench({ capabilities }), model({ ...sheet, rules }), aged)
+    expect(warning!.remedy).toContain('before the wiggle ends')
+    expect(warning!.remedy).not.toContain('at the end')
   })
 
   test('says when the pattern is not set', () => {
