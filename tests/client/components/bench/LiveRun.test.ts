@@ -243,7 +243,7 @@ describe('LiveRun', () => {
       userId: view.openedBy.id,
       person: view.openedBy.name,
       at: view.openedAt,
-      action: { kind: 'changePerson', person: view.openedBy.name },
+      action: { kind: 'changePerson' as const, person: view.openedBy.name },
     }
     show({ ...view, actions: [taken] }, false)
     expect(wrapper!.get('.notice').text()).toBe('Bench hand has taken this check over. You are watching.')
