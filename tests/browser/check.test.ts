@@ -39,8 +39,9 @@ afterAll(async () => {
   await at.close()
 })
 
-function simulate(body: unknown): Promise<unknown> {
-  return installer.call('benches.simulate', { params: { id: benchId }, body })
+/** Only who opened the run commands its bench. */
+function simulate(body: unknown, person: TestPerson = installer): Promise<unknown> {
+  return person.call('benches.simulate', { params: { id: benchId }, body })
 }
 
 /** From the sign-in to a run that has just begun, as a new installer goes. */
@@ -73,13 +74,14 @@ async function verdictOf(page: Page, word: string): Promise<void> {
 
 async function wholeJourney(serial: string, look: Look, account: string): Promise<void> {
   const { page, errors, context } = await openPage(browser, look)
+  const person = await at.signIn(account)
   await simulate({ kind: 'place', seed: 4, faults: [], scatterDb: 0.4 })
   await simulate({ kind: 'automaticHand', on: false })
   await startCheck(page, serial, account)
   expect(await seriousFindings(page)).toEqual([])
   await expectNoSidewaysScroll(page)
   const runId = await openRunId()
-  await simulate({ kind: 'automaticHand', on: true, speed: 15 })
+  await simulate({ kind: 'automaticHand', on: true, speed: 15 }, person)
   await page.getByRole('heading', { level: 1, name: /Damp, then pluck|Pluck/ }).waitFor()
   expect(await seriousFindings(page)).toEqual([])
   await verdictOf(page, 'Pass')

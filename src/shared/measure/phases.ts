@@ -1,7 +1,8 @@
 import type { BenchEvent, Frame } from '../contract/frames.ts'
 import type { RunPhase } from '../contract/measured.ts'
-import { CENSOR_DB, NOTHING_CAME_MS, SAME_PLUCK_MS, WINDOW_TO_MS } from './constants.ts'
+import { CENSOR_DB, NOTHING_CAME_MS, SAME_PLUCK_MS, SETTLE_LEAST_MS, WINDOW_TO_MS } from './constants.ts'
 import { evaluateRun } from './evaluateRun.ts'
+import { framesOf } from './framesOf.ts'
 import { foldJackRest, foldSettle, foldUnplugged } from './jackPhases.ts'
 import { restartRest, restartUnplugged, takeContact, takeDisturbance, takeInsulation } from './jackWatch.ts'
 import { decideRun, stringsInGuardBand } from './judgeRun.ts'
@@ -9,7 +10,7 @@ import { forgetLevels, meanPowerIn, pushFrame } from './levelRing.ts'
 import { dbOfPower } from './meanPowerDb.ts'
 import { foldNoise, takeHum, takeLatestNoise } from './noisePhase.ts'
 import { restartNoiseStretch } from './noiseStretch.ts'
-import { disarmOnsets } from './onsetWatch.ts'
+import { disarmOnsets, onsetsAt } from './onsetWatch.ts'
 import { forgetPitches, logPitch } from './pitchLog.ts'
 import { endPlucks, interruptPluck, takeNoSignal, watchPlucks } from './plucks.ts'
 import { progressOf } from './progressOf.ts'
@@ -39,6 +40,17 @@ export function foldFrame(state: RunState, frame: Frame, events: readonly BenchE
   if (ended) endRun(state)
 }
 
+/** A plug that was out thumps when it comes back, and the preamp settles: none of that is a pluck. */
+function settlesAnew(state: RunState, frameNo: number): boolean {
+  if (state.plugged === false) {
+    interruptPluck(state, 'interrupted')
+    state.plucksFromFrame = frameNo + framesOf(SETTLE_LEAST_MS, state.setup.frameMs)
+  }
+  if (frameNo >= state.plucksFromFrame) return false
+  onsetsAt(state.onsets, state.ring, frameNo)
+  return true
+}
+
 function notePlug(state: RunState, { plugged }: Frame): void {
   if (plugged === null || plugged === state.plugged) return
   state.plugged = plugged
@@ -60,6 +72,7 @@ function foldIntoPhase(state: RunState, frameNo: number, frame: Frame): void {
       if (foldNoise(state, frameNo, frame)) advance(state)
       return
     case 'strings':
+      if (settlesAnew(state, frameNo)) return
       watchPlucks(state, frameNo)
       if (askedString(state) === null) finishStrings(state)
       return

@@ -56,6 +56,8 @@ export interface RunState {
   pluck: PluckUnderWay | null
   jack: JackWatch
   plugged: boolean | null
+  /** before this frame nothing is a pluck: the plug was out and the preamp settles anew */
+  plucksFromFrame: number
   person: string
   entered: MeasuredRun['entered']
   verdict: Verdict | null
@@ -89,6 +91,7 @@ export function createState(setup: RunSetup): RunState {
     pluck: null,
     jack: createJackWatch(),
     plugged: null,
+    plucksFromFrame: 0,
     person: setup.person,
     entered: [],
     verdict: null,
